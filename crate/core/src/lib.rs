@@ -1,0 +1,12 @@
+//! The simulator: plain data and pure functions; reports as numbers.
+//!
+//! No browser, clock, thread, file, text format or random source lives here.
+//! Discharge current is positive; SI inside; temperatures in °C at the edge.
+
+pub mod board;
+pub mod cell;
+pub mod load;
+pub mod math;
+pub mod report;
+pub mod setup;
+pub mod units;
