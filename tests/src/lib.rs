@@ -1,1 +1,3 @@
 //! Support for the reference tests.
+
+pub mod case;

@@ -5,8 +5,11 @@
 
 pub mod board;
 pub mod cell;
+pub mod charge;
+mod circuit;
 pub mod load;
 pub mod math;
+pub mod press;
 pub mod report;
 pub mod setup;
 pub mod units;

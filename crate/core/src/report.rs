@@ -1,5 +1,6 @@
 //! What a run reports: events, samples, summaries and the energy ledger, as numbers.
 
+use crate::cell::MAX_BRANCHES;
 use crate::units::{AmpHours, Amps, Celsius, Joules, Ohms, Seconds, Volts};
 
 /// State of the load.
@@ -147,9 +148,9 @@ pub struct Ledger {
     pub capacitor_left: Joules,
     /// Into the load while lit.
     pub load_lit: Joules,
-    /// Into the load while it runs without an arc.
+    /// Into the load while it runs without an arc or is held at the start voltage.
     pub load_unlit: Joules,
-    /// Into the load while stalled or held at the start voltage.
+    /// Into the load while stalled.
     pub load_stalled: Joules,
     /// Into the standby draw, in rests.
     pub standby: Joules,
@@ -250,8 +251,8 @@ pub struct PressSummary {
     pub soc_start: f64,
     /// State of charge at the end.
     pub soc_end: f64,
-    /// Of the slow branches at the end.
-    pub branches_end: Vec<Volts>,
+    /// Of the slow branches at the end; 0 where the cell has none.
+    pub branches_end: [Volts; MAX_BRANCHES],
     /// Cell temperature at the end.
     pub cell_temperature_end: Celsius,
     /// Highest cell temperature.

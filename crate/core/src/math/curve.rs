@@ -80,6 +80,8 @@ pub struct Segment {
 pub struct Polyline {
     x: Vec<f64>,
     y: Vec<f64>,
+    /// Slope of each piece, one fewer than the points.
+    slope: Vec<f64>,
 }
 
 impl Polyline {
@@ -89,12 +91,13 @@ impl Polyline {
     /// Unequal lengths, no point, a number that is not finite, or places that do not rise.
     pub fn new(x: Vec<f64>, y: Vec<f64>) -> Result<Self, CurveError> {
         check(&x, &y, 1)?;
-        Ok(Self { x, y })
+        let slope = (1..x.len()).map(|k| (y[k] - y[k - 1]) / (x[k] - x[k - 1])).collect();
+        Ok(Self { x, y, slope })
     }
 
     /// The same value everywhere. A value that is not finite is taken as it is.
     pub fn constant(value: f64) -> Self {
-        Self { x: vec![0.0], y: vec![value] }
+        Self { x: vec![0.0], y: vec![value], slope: vec![] }
     }
 
     /// The places.
@@ -118,14 +121,18 @@ impl Polyline {
             return Segment { from: xs[last], to: f64::INFINITY, x0: xs[last], y0: ys[last], slope: 0.0 };
         }
         let k = piece(xs, x);
-        let slope = (ys[k + 1] - ys[k]) / (xs[k + 1] - xs[k]);
-        Segment { from: xs[k], to: xs[k + 1], x0: xs[k], y0: ys[k], slope }
+        Segment { from: xs[k], to: xs[k + 1], x0: xs[k], y0: ys[k], slope: self.slope[k] }
     }
 
     /// The value at `x`.
     pub fn at(&self, x: f64) -> f64 {
+        self.at_with_slope(x).0
+    }
+
+    /// Value and slope at `x`; outside the points the slope is 0.
+    pub fn at_with_slope(&self, x: f64) -> (f64, f64) {
         let s = self.segment(x);
-        s.y0 + s.slope * (x - s.x0)
+        (s.y0 + s.slope * (x - s.x0), s.slope)
     }
 }
 
@@ -140,7 +147,8 @@ impl Polyline {
 pub struct Monotone {
     x: Vec<f64>,
     y: Vec<f64>,
-    slope: Vec<f64>,
+    /// The cubic of each piece in powers of the distance from its left knot.
+    cubic: Vec<[f64; 4]>,
 }
 
 impl Monotone {
@@ -152,7 +160,15 @@ impl Monotone {
     pub fn new(x: Vec<f64>, y: Vec<f64>) -> Result<Self, CurveError> {
         check(&x, &y, 2)?;
         let slope = slopes(&x, &y);
-        Ok(Self { x, y, slope })
+        let cubic = (0..x.len() - 1)
+            .map(|k| {
+                let h = x[k + 1] - x[k];
+                let secant = (y[k + 1] - y[k]) / h;
+                let (d0, d1) = (slope[k], slope[k + 1]);
+                [y[k], d0, (3.0 * secant - 2.0 * d0 - d1) / h, (d0 + d1 - 2.0 * secant) / (h * h)]
+            })
+            .collect();
+        Ok(Self { x, y, cubic })
     }
 
     /// The places.
@@ -180,7 +196,7 @@ impl Monotone {
             return (self.y[last], 0.0);
         }
         let k = piece(&self.x, x);
-        let c = self.cubic(k);
+        let c = self.cubic[k];
         let d = x - self.x[k];
         (c[0] + d * (c[1] + d * (c[2] + d * c[3])), c[1] + d * (2.0 * c[2] + 3.0 * d * c[3]))
     }
@@ -194,20 +210,12 @@ impl Monotone {
         for k in 0..self.x.len() - 1 {
             let (from, to) = (a.max(self.x[k]), b.min(self.x[k + 1]));
             if from < to {
-                let c = self.cubic(k);
+                let c = self.cubic[k];
                 let primitive = |d: f64| d * (c[0] + d * (c[1] / 2.0 + d * (c[2] / 3.0 + d * c[3] / 4.0)));
                 sum += primitive(to - self.x[k]) - primitive(from - self.x[k]);
             }
         }
         sum
-    }
-
-    /// The cubic of piece `k` in powers of the distance from its left knot.
-    pub(crate) fn cubic(&self, k: usize) -> [f64; 4] {
-        let h = self.x[k + 1] - self.x[k];
-        let secant = (self.y[k + 1] - self.y[k]) / h;
-        let (d0, d1) = (self.slope[k], self.slope[k + 1]);
-        [self.y[k], d0, (3.0 * secant - 2.0 * d0 - d1) / h, (d0 + d1 - 2.0 * secant) / (h * h)]
     }
 }
 

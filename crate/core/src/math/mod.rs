@@ -4,6 +4,7 @@
 //! between a native test and the page; from one library both get the same bits.
 
 mod curve;
+pub(crate) mod dormand_prince;
 
 pub use curve::{CurveError, Monotone, Polyline, Segment};
 
