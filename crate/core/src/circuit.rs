@@ -114,6 +114,17 @@ pub(crate) struct Circuit<'a> {
     pub(crate) after: f64,
     pub(crate) load: &'a crate::load::Load,
     pub(crate) stall_ohm: f64,
+    /// The Arrhenius factors at the whole degree last asked for.
+    anchor: Hint<Anchor>,
+}
+
+/// Both Arrhenius factors at a whole degree.
+#[derive(Clone, Copy)]
+struct Anchor {
+    degree: f64,
+    inverse_kelvin: f64,
+    r0: f64,
+    branch: f64,
 }
 
 impl<'a> Circuit<'a> {
@@ -138,7 +149,33 @@ impl<'a> Circuit<'a> {
             after: setup.path.after.0,
             load: &setup.load,
             stall_ohm: setup.load.stall.unwrap_or(setup.load.unlit).0,
+            anchor: Hint::new(Anchor { degree: f64::NAN, inverse_kelvin: 0.0, r0: 1.0, branch: 1.0 }),
         }
+    }
+
+    /// The Arrhenius factors of `R₀` and of the branches at `t` in °C, `1/T` in 1/K given.
+    ///
+    /// From the factors at the nearest whole degree by the series of eˣ: within half a degree |x| stays
+    /// below 0.06 for activation energies up to 80 kJ/mol, where five terms are good to 10⁻⁸. It is a
+    /// function of the temperature alone, whatever was asked before.
+    fn arrhenius(&self, t: f64, inverse_kelvin: f64) -> (f64, f64) {
+        let cell = self.cell;
+        let degree = t.round();
+        let mut anchor = self.anchor.get();
+        if anchor.degree != degree {
+            let inverse = 1.0 / Celsius(degree).kelvin();
+            let x = (inverse - 1.0 / REFERENCE_K) / GAS_CONSTANT;
+            anchor = Anchor {
+                degree,
+                inverse_kelvin: inverse,
+                r0: exp(cell.r0_activation * x),
+                branch: exp(cell.branch_activation * x),
+            };
+            self.anchor.set(anchor);
+        }
+        let x = (inverse_kelvin - anchor.inverse_kelvin) / GAS_CONSTANT;
+        let series = |x: f64| 1.0 + x * (1.0 + x * (0.5 + x * (1.0 / 6.0 + x * (1.0 / 24.0))));
+        (anchor.r0 * series(cell.r0_activation * x), anchor.branch * series(cell.branch_activation * x))
     }
 
     pub(crate) fn cell_now(&self, soc: f64, t: f64) -> CellNow {
@@ -147,8 +184,8 @@ impl<'a> Circuit<'a> {
         let (entropy, entropy_slope) = cell.entropy.at_with_slope(soc);
         let (shape, shape_slope) = cell.r0_shape.at_with_slope(soc);
         let kelvin = Celsius(t).kelvin();
-        let inverse = (1.0 / kelvin - 1.0 / REFERENCE_K) / GAS_CONSTANT;
-        let base = cell.r0.0 * cell.growth / self.parallel * exp(cell.r0_activation * inverse);
+        let (r0_factor, branch_factor) = self.arrhenius(t, 1.0 / kelvin);
+        let base = cell.r0.0 * cell.growth / self.parallel * r0_factor;
         let r0 = base * shape;
         CellNow {
             ocv: u + (t - 25.0) * entropy,
@@ -156,8 +193,7 @@ impl<'a> Circuit<'a> {
             entropy,
             r0,
             r0_slope: (base * shape_slope, -r0 * cell.r0_activation / (GAS_CONSTANT * kelvin * kelvin)),
-            branch_factor: cell.branch_shape.at(soc) * cell.growth / self.parallel
-                * exp(cell.branch_activation * inverse),
+            branch_factor: cell.branch_shape.at(soc) * cell.growth / self.parallel * branch_factor,
         }
     }
 

@@ -13,3 +13,4 @@ pub mod press;
 pub mod report;
 pub mod setup;
 pub mod units;
+pub mod verdict;

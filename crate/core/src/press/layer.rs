@@ -1,0 +1,285 @@
+//! The fast stretch after a change, by quadrature.
+//!
+//! For the first few time constants of the input capacitor the slow states stand still, so the
+//! capacitor's equation `dv_C/dt = i_C(V)/C` has only V in it and time is an integral over V:
+//! `t = ∫ C·(dv_C/dV)/i_C dV`. A threshold is then a bound of the integral instead of a root to be
+//! searched for in time. Where the stretch ends on an operating point V_e, which it reaches never, the
+//! variable is `s = ln[(V_e − V₀)/(V_e − V)]`, in which the integrand is smooth up to the end.
+//!
+//! What it leaves out is checked afterwards: where the slow states would have moved the source by more
+//! than a few microvolts, where a surge flows or a sample is wanted, the stretch is left to the steps.
+
+use super::{
+    BRANCH, CAP, CELL_T, CHARGE, Celsius, Crossing, Held, I2, MAX_BRANCHES, Mode, Moment, PAIR, SECOND,
+    SECOND_T, SUMS, SWITCH_T, Simulator, Z,
+};
+
+/// Nodes and weights of Gauss and Legendre's rule with five points on −1 to 1, exact to degree 9.
+///
+/// Source: Abramowitz and Stegun, Handbook of Mathematical Functions, table 25.4.
+const NODES: [(f64, f64); 5] = [
+    (-0.906_179_845_938_664, 0.236_926_885_056_189),
+    (-0.538_469_310_105_683, 0.478_628_670_499_366),
+    (0.0, 0.568_888_888_888_889),
+    (0.538_469_310_105_683, 0.478_628_670_499_366),
+    (0.906_179_845_938_664, 0.236_926_885_056_189),
+];
+/// How near to an operating point a stretch goes, in V; the capacitor is slaved from there.
+const NEAR: f64 = 1e-6;
+/// How far the slow states may move the source within a stretch, in V.
+const STILL: f64 = 2.5e-5;
+
+/// Where a stretch leads.
+#[derive(Clone, Copy)]
+enum Goal {
+    /// To a threshold.
+    Threshold(Crossing),
+    /// To an operating point, and stays.
+    Settled,
+}
+
+impl Simulator<'_> {
+    /// Follows the fast stretch from `now`, if it is one; whether it did.
+    pub(super) fn layer(&mut self, now: &mut Moment<'_, '_>, stop: f64) -> bool {
+        let load = &self.setup.load;
+        let wants_samples = now.recorder.as_ref().is_some_and(|r| now.next_sample < r.wanted.len());
+        let surges = load.surge.0 > 0.0 && self.surge_from.is_some();
+        if self.slaved || self.mode == Mode::Pinned || load.esr.0 > 0.0 || wants_samples || surges {
+            return false;
+        }
+        let from = now.point;
+        let Some((to, goal, settled)) = self.goal(now) else { return false };
+        let Some((length, sums, last, nodes)) = self.quadrature(now, to, settled) else { return false };
+        let c = &self.circuit;
+        // The slow states over the stretch, to first order; they must hardly have moved.
+        let charge = sums[CHARGE];
+        let mut y = now.y;
+        y[Z] -= charge / c.charge_as;
+        let mut moved = from.cell.ocv_slope.abs() * charge / c.charge_as;
+        for k in 0..MAX_BRANCHES {
+            let r = c.branch_ohm[k] * from.cell.branch_factor;
+            let rise = (r * charge - now.y[BRANCH + k] * length) * c.branch_rate[k];
+            y[BRANCH + k] += rise;
+            moved += rise.abs();
+        }
+        if moved > STILL || now.t + length >= stop || y[Z] <= 0.0 {
+            return false;
+        }
+        let cell = &self.setup.cell;
+        let ambient = self.setup.usage.ambient.0;
+        let kelvin = Celsius(now.y[CELL_T]).kelvin();
+        let heat = charge * (from.polar - kelvin * from.cell.entropy) + sums[I2] * from.cell.r0;
+        y[CELL_T] +=
+            (heat - cell.cooling_w_per_k * (y[CELL_T] - ambient) * length) / cell.heat_capacity_j_per_k;
+        if let Some(s) = &c.board {
+            y[SWITCH_T] +=
+                (sums[PAIR] * s.thermal_k_per_w - (y[SWITCH_T] - ambient) * length) / s.thermal_time_s;
+        }
+        if let Some(s) = &c.second {
+            y[SECOND_T] +=
+                (sums[SECOND] * s.thermal_k_per_w - (y[SECOND_T] - ambient) * length) / s.thermal_time_s;
+        }
+        y[CAP] = to;
+        now.tally.steps += nodes;
+        self.book(&mut now.tally, &sums, (from.at.v, last.v), length);
+        now.tally.reach(&y, last.path.current);
+        now.y = y;
+        now.t += length;
+        self.guess = to;
+        match goal {
+            Goal::Settled => {
+                self.slaved = true;
+                now.point = self.point(&now.y, now.t);
+                // A load that the slow states move too fast for that is followed by steps.
+                self.change_regime(now);
+            }
+            Goal::Threshold(crossing) => {
+                now.point = self.point(&now.y, now.t);
+                self.cross(crossing, now);
+            }
+        }
+        true
+    }
+
+    /// Where the capacitor is heading: the voltage, what is there, and the operating point if the way
+    /// leads towards one.
+    fn goal(&self, now: &Moment<'_, '_>) -> Option<(f64, Goal, Option<f64>)> {
+        let load = &self.setup.load;
+        let from = &now.point;
+        if from.at.charging.abs() < 1e-9 {
+            return None;
+        }
+        let rising = from.at.charging > 0.0;
+        let threshold = match (self.mode, rising) {
+            (Mode::Stalled, true) => Some((load.start.0, Crossing::Start)),
+            (Mode::Unlit, true) if self.strike_since.is_none() => Some((load.strike.0, Crossing::Strike)),
+            (Mode::Unlit, false) if self.strike_since.is_some() => {
+                Some((load.strike.0, Crossing::StrikeLost))
+            }
+            (Mode::Unlit, false) => Some((load.start.0, Crossing::BelowStart)),
+            (Mode::Lit, false) => Some((load.hold.0, Crossing::BelowHold)),
+            (Mode::Stalled, false) | (Mode::Lit, true) | (Mode::Unlit, true) => None,
+            (Mode::Pinned, _) => return None,
+        };
+        // Past it already, by rounding or because it was just left: not a stretch.
+        let threshold = threshold.filter(|(v, _)| if rising { *v > from.at.v } else { *v < from.at.v });
+        let reaches = |v: f64| {
+            let charging = self.held(now, v).charging;
+            if rising { charging > 0.0 } else { charging < 0.0 }
+        };
+        let mut settled = None;
+        let (mut to, mut goal) = match threshold {
+            // i_C keeps its sign to the threshold wherever it has one change of sign at most.
+            Some((v, crossing)) if reaches(v) => (v, Goal::Threshold(crossing)),
+            _ => {
+                let v = self.operating_point(now, threshold.map(|(v, _)| v))?;
+                let side = if rising { -NEAR } else { NEAR };
+                settled = Some(v);
+                ((v + side), Goal::Settled)
+            }
+        };
+        if (to - from.at.v) * from.at.charging <= 0.0 {
+            return None;
+        }
+        // A limit whose sign changes on the way comes first.
+        let mut end = self.held(now, to);
+        for k in 0..self.watches.len() {
+            let watch = &self.watches[k];
+            let over = watch.since.is_some();
+            let passes = |excess: f64| if over { excess < 0.0 } else { excess > 0.0 };
+            if passes(self.excess(watch, &from.at)) || !passes(self.excess(watch, &end)) {
+                continue;
+            }
+            let v = self.threshold_voltage(now, k, from.at.v, to);
+            (to, goal) = (v, Goal::Threshold(Crossing::Limit(k)));
+            end = self.held(now, to);
+        }
+        Some((to, goal, settled))
+    }
+
+    /// Path and load with the load held at `v`, the slow states as they are.
+    fn held(&self, now: &Moment<'_, '_>, v: f64) -> Held {
+        let point = &now.point;
+        let e = point.cell.ocv - point.polar;
+        let path = self.circuit.path(e, point.cell.r0, self.factors(&now.y), v);
+        let (draw, draw_slope) = self.circuit.draw(self.mode, v);
+        Held { path, v, draw, draw_slope, charging: path.current - draw }
+    }
+
+    /// The operating point ahead, found by Newton's rule kept between the start and `limit`.
+    fn operating_point(&self, now: &Moment<'_, '_>, limit: Option<f64>) -> Option<f64> {
+        let from = &now.point;
+        let rising = from.at.charging > 0.0;
+        let far = limit.unwrap_or(if rising { from.cell.ocv - from.polar } else { 1e-3 });
+        let (mut before, mut behind) = (from.at.v, far);
+        let mut v = from.at.v;
+        let mut point = from.at;
+        for _ in 0..60 {
+            let stiffness = point.path.conductance + point.draw_slope;
+            let mut next = v + point.charging / stiffness;
+            let inside = if rising { next > before && next < behind } else { next < before && next > behind };
+            if !(stiffness > 0.0 && inside) {
+                next = 0.5 * (before + behind);
+            }
+            let moved = (next - v).abs();
+            v = next;
+            point = self.held(now, v);
+            if moved < 1e-12 {
+                return (point.path.conductance + point.draw_slope > 0.0).then_some(v);
+            }
+            if (point.charging > 0.0) == rising {
+                before = v;
+            } else {
+                behind = v;
+            }
+        }
+        None
+    }
+
+    /// The voltage between `a` and `b` at which limit `k` is just met.
+    fn threshold_voltage(&self, now: &Moment<'_, '_>, k: usize, a: f64, b: f64) -> f64 {
+        let excess = |v: f64| self.excess(&self.watches[k], &self.held(now, v));
+        let (mut a, mut b) = (a, b);
+        let (mut at_a, mut at_b) = (excess(a), excess(b));
+        let mut side = 0;
+        for _ in 0..60 {
+            let secant = a + (b - a) * at_a / (at_a - at_b);
+            let v =
+                if secant.is_finite() && (secant - a) * (secant - b) < 0.0 { secant } else { 0.5 * (a + b) };
+            let value = excess(v);
+            if value.abs() < 1e-13 || (b - a).abs() < 1e-12 {
+                return v;
+            }
+            if (value > 0.0) == (at_a > 0.0) {
+                (a, at_a) = (v, value);
+                if side == 1 {
+                    at_b *= 0.5;
+                }
+                side = 1;
+            } else {
+                (b, at_b) = (v, value);
+                if side == -1 {
+                    at_a *= 0.5;
+                }
+                side = -1;
+            }
+        }
+        b
+    }
+
+    /// Time, sums and the last point of the way to `to`, and how many nodes it took.
+    fn quadrature(
+        &self,
+        now: &Moment<'_, '_>,
+        to: f64,
+        settled: Option<f64>,
+    ) -> Option<(f64, [f64; SUMS], Held, u32)> {
+        let from = now.point.at.v;
+        let capacitance = self.setup.load.capacitance.0;
+        let mut length = 0.0;
+        let mut sums = [0.0; SUMS];
+        let mut nodes = 0;
+        // `dv` is dV over the variable of integration at V.
+        let mut add = |v: f64, dv: f64, weight: f64| {
+            let point = self.held(now, v);
+            let time = weight * capacitance * dv / point.charging;
+            length += time;
+            for (sum, flow) in sums.iter_mut().zip(now.point.flow_at(&point)) {
+                *sum += time * flow;
+            }
+            nodes += 1;
+        };
+        match settled {
+            Some(v_e) => {
+                let all = crate::math::ln((v_e - from) / (v_e - to));
+                let mut a = 0.0;
+                // The integrand goes to a constant as e^(−s): pieces grow with s.
+                for b in [2.0, 7.0, f64::INFINITY] {
+                    let b = all.min(b);
+                    let (middle, half) = (0.5 * (a + b), 0.5 * (b - a));
+                    for (x, weight) in NODES {
+                        let away = (v_e - from) * crate::math::exp(-(middle + half * x));
+                        add(v_e - away, away, weight * half);
+                    }
+                    a = b;
+                    if a >= all {
+                        break;
+                    }
+                }
+            }
+            None => {
+                // Near an operating point 1/i_C is steep: two pieces there.
+                let steep = self.held(now, to).charging / now.point.at.charging < 0.3;
+                let pieces = if steep { 2 } else { 1 };
+                let piece = (to - from) / f64::from(pieces);
+                for k in 0..pieces {
+                    let middle = from + piece * (f64::from(k) + 0.5);
+                    for (x, weight) in NODES {
+                        add(middle + 0.5 * piece * x, 1.0, weight * 0.5 * piece);
+                    }
+                }
+            }
+        }
+        (length.is_finite() && length >= 0.0).then(|| (length, sums, self.held(now, to), nodes))
+    }
+}
