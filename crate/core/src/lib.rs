@@ -10,6 +10,7 @@ mod circuit;
 pub mod load;
 pub mod math;
 pub mod press;
+pub mod replay;
 pub mod report;
 pub mod setup;
 pub mod units;
