@@ -1,3 +1,4 @@
 //! Support for the reference tests.
 
 pub mod case;
+pub mod derive;

@@ -1,1 +1,3 @@
-//! To come.
+//! What is entered, kept and shared.
+
+pub mod shipped;
