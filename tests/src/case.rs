@@ -10,12 +10,10 @@ use strikeline_core::charge;
 use strikeline_core::load::{LitDraw, Load};
 use strikeline_core::math::{Monotone, Polyline};
 use strikeline_core::press::{self, PressOptions, PressStart};
-use strikeline_core::report::{
-    ChargeEnd, ChargeReport, Event, EventKind, Ledger, Limit, Mode, NotFull, PressEnd, PressReport,
-    PressSummary, Protector,
-};
+use strikeline_core::report::{ChargeReport, PressReport};
 use strikeline_core::setup::{Arrangement, Path, Setup, Use};
 use strikeline_core::units::{AmpHours, Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
+use strikeline_design::report::{charge_json, event_json, summary_json, trace_json};
 
 /// A case as its file holds it.
 #[derive(Debug, Clone, Deserialize)]
@@ -313,103 +311,7 @@ impl Case {
     }
 }
 
-fn mode_name(mode: Mode) -> &'static str {
-    match mode {
-        Mode::Stalled => "stalled",
-        Mode::Pinned => "pinned",
-        Mode::Unlit => "unlit",
-        Mode::Lit => "lit",
-    }
-}
-
-fn limit_name(setup: &Setup, limit: Limit) -> String {
-    let (protector, board) = match limit {
-        Limit::Stage(p, _) | Limit::OverDischarge(p) => match p {
-            Protector::Board => ("", setup.board.as_ref()),
-            Protector::Second => ("second:", setup.second_protector.as_ref()),
-        },
-    };
-    let name = match limit {
-        Limit::Stage(_, k) => board.and_then(|b| b.stages.get(k)).map_or("?", |s| s.name.as_str()),
-        Limit::OverDischarge(_) => "over_discharge",
-    };
-    format!("{protector}{name}")
-}
-
-fn not_full_name(setup: &Setup, why: NotFull) -> String {
-    match why {
-        NotFull::Opened(limit) => format!("opened:{}", limit_name(setup, limit)),
-        NotFull::CellEmpty => "cell_empty".into(),
-        NotFull::EventLimit => "event_limit".into(),
-        NotFull::SagBelowHold => "dropped:sag_below_hold".into(),
-        NotFull::NoOperatingPoint => "dropped:no_operating_point".into(),
-        NotFull::NotStarted => "not_started".into(),
-        NotFull::StrikeVoltageNotReached => "strike_voltage_not_reached".into(),
-        NotFull::StrikeTimeNotCompleted => "strike_time_not_completed".into(),
-    }
-}
-
-fn event_json(setup: &Setup, e: &Event) -> Value {
-    let (kind, detail) = match e.kind {
-        EventKind::Closed => ("closed", None),
-        EventKind::Over(limit) => ("over", Some(limit)),
-        EventKind::Under(limit) => ("under", Some(limit)),
-        EventKind::StartReached => ("start_reached", None),
-        EventKind::Runs => ("runs", None),
-        EventKind::PinnedAtStart => ("pinned_at_start", None),
-        EventKind::Stalls => ("stalls", None),
-        EventKind::StrikeReached => ("strike_reached", None),
-        EventKind::StrikeLost => ("strike_lost", None),
-        EventKind::Lit => ("lit", None),
-        EventKind::Drop => ("drop", None),
-        EventKind::Opened(limit) => ("opened", Some(limit)),
-        EventKind::CellEmpty => ("cell_empty", None),
-        EventKind::Released => ("released", None),
-        EventKind::EventLimit => ("event_limit", None),
-    };
-    json!({
-        "t_s": e.time.0, "kind": kind, "detail": detail.map(|l| limit_name(setup, l)), "mode": mode_name(e.mode),
-        "V_load_V": e.load.0, "I_A": e.current.0, "V_board_V": e.board.0, "V_cell_V": e.cell.0, "soc": e.soc,
-    })
-}
-
-fn ledger_json(l: &Ledger) -> Value {
-    json!({
-        "source": l.source.0, "cell_ohmic": l.cell_ohmic.0, "cell_polarisation": l.cell_polarisation.0,
-        "second_protector": l.second_protector.0, "ahead": l.ahead.0, "pair": l.pair.0, "shunt": l.shunt.0,
-        "after": l.after.0, "esr": l.esr.0, "c_in_left": l.capacitor_left.0, "load_lit": l.load_lit.0,
-        "load_unlit": l.load_unlit.0, "load_stalled": l.load_stalled.0, "standby": l.standby.0,
-    })
-}
-
-fn summary_json(setup: &Setup, s: &PressSummary, branches: usize) -> Value {
-    let (ended, opened_by) = match s.end {
-        PressEnd::Released => ("released", None),
-        PressEnd::Opened(limit) => ("opened", Some(limit)),
-        PressEnd::CellEmpty => ("cell_empty", None),
-        PressEnd::EventLimit => ("event_limit", None),
-    };
-    let v_end: Vec<f64> = s.branches_end.iter().take(branches).map(|v| v.0).collect();
-    json!({
-        "full": s.not_full.is_none(), "why_not_full": s.not_full.map(|w| not_full_name(setup, w)),
-        "ended": ended, "opened_by": opened_by.map(|l| limit_name(setup, l)), "t_end_s": s.end_time.0,
-        "lit_s": s.lit.0, "first_lit_s": s.first_lit.map(|t| t.0), "drops": s.drops, "started": s.start.is_some(),
-        "start_s": s.start.map(|t| t.0), "end_mode": mode_name(s.end_mode), "V_load_end_V": s.load_end.0,
-        "I_end_A": s.current_end.0, "V_board_end_V": s.board_end.0, "V_cell_end_V": s.cell_end.0,
-        "R_pair_end_ohm": s.pair_end.0, "peak_I_A": s.peak_current.0, "lowest_lit_V": s.lowest_lit.map(|v| v.0),
-        "soc_start": s.soc_start, "soc_end": s.soc_end, "v_end_V": v_end,
-        "T_cell_end_C": s.cell_temperature_end.0, "T_switch_end_C": s.switch_temperature_end.0,
-        "T_switch2_end_C": s.second_temperature_end.0, "T_cell_max_C": s.cell_temperature_max.0,
-        "T_switch_max_C": s.switch_temperature_max.0, "T_switch2_max_C": s.second_temperature_max.0,
-        "energy_J": ledger_json(&s.ledger), "ledger_residual_rel": s.ledger.residual(), "charge_As": s.charge_as,
-        "i2t_A2s": s.i2t_a2s, "steps": s.steps,
-    })
-}
-
 fn press_result(setup: &Setup, name: &str, report: &PressReport) -> Value {
-    let trace = &report.trace;
-    let column =
-        |f: &dyn Fn(&strikeline_core::report::Sample) -> Value| trace.iter().map(f).collect::<Vec<_>>();
     let sense_names: Vec<&str> =
         setup.board_in_path().map(|b| b.stages.iter().map(|s| s.name.as_str()).collect()).unwrap_or_default();
     let mut counts = serde_json::Map::new();
@@ -419,50 +321,22 @@ fn press_result(setup: &Setup, name: &str, report: &PressReport) -> Value {
         let so_far = counts.get(kind).and_then(Value::as_u64).unwrap_or(0);
         counts.insert(kind.into(), json!(so_far + 1));
     }
-    let mut summary = summary_json(setup, &report.summary, setup.cell.branches.len());
+    let mut summary = summary_json(setup, &report.summary);
     summary["event_counts"] = Value::Object(counts);
-    json!({
-        "schema": 1, "case": name, "kind": "press", "events": events,
-        "trace": {
-            "t_s": column(&|s| json!(s.time.0)), "mode": column(&|s| json!(mode_name(s.mode))),
-            "V_load_V": column(&|s| json!(s.load.0)), "V_board_V": column(&|s| json!(s.board.0)),
-            "V_cell_V": column(&|s| json!(s.cell.0)), "I_A": column(&|s| json!(s.current.0)),
-            "I_load_A": column(&|s| json!(s.load_current.0)), "v_C_V": column(&|s| json!(s.capacitor.0)),
-            "soc": column(&|s| json!(s.soc)),
-            "v_V": column(&|s| json!(s.branches.iter().map(|v| v.0).collect::<Vec<_>>())),
-            "T_cell_C": column(&|s| json!(s.cell_temperature.0)),
-            "T_switch_C": column(&|s| json!(s.switch_temperature.0)),
-            "R_pair_ohm": column(&|s| json!(s.pair.0)), "sense": column(&|s| json!(s.sense)),
-            "sense_names": sense_names,
-        },
-        "summary": summary,
-    })
+    let mut trace = trace_json(report);
+    trace["sense_names"] = json!(sense_names);
+    json!({ "schema": 1, "case": name, "kind": "press", "events": events, "trace": trace, "summary": summary })
 }
 
 fn charge_result(setup: &Setup, name: &str, report: &ChargeReport) -> Value {
-    let ended = match report.end {
-        ChargeEnd::NoLitTime(why) => format!("no_lit_time:{}", not_full_name(setup, why)),
-        ChargeEnd::Opened(limit) => format!("opened:{}", limit_name(setup, limit)),
-        ChargeEnd::OpenedInRest(limit) => format!("opened_in_rest:{}", limit_name(setup, limit)),
-        ChargeEnd::CellEmpty => "cell_empty".into(),
-        ChargeEnd::EmptyInRest => "in_rest:cell_empty".into(),
-        ChargeEnd::PressLimit => "press_limit".into(),
-        ChargeEnd::WorkLimit => "work_limit".into(),
-    };
     let presses: Vec<Value> = report
         .presses
         .iter()
         .map(|p| {
-            let s = &p.summary;
-            json!({
-                "n": p.number, "full": s.not_full.is_none(),
-                "why_not_full": s.not_full.map(|w| not_full_name(setup, w)), "rested_V": p.rested.0,
-                "soc_start": s.soc_start, "soc_end": s.soc_end, "lit_s": s.lit.0,
-                "first_lit_s": s.first_lit.map(|t| t.0), "drops": s.drops, "t_end_s": s.end_time.0,
-                "V_load_end_V": s.load_end.0, "I_end_A": s.current_end.0, "V_board_end_V": s.board_end.0,
-                "T_cell_end_C": s.cell_temperature_end.0, "T_switch_end_C": s.switch_temperature_end.0,
-                "peak_I_A": s.peak_current.0,
-            })
+            let mut line = summary_json(setup, &p.summary);
+            line["n"] = json!(p.number);
+            line["rested_V"] = json!(p.rested.0);
+            line
         })
         .collect();
     let events_of = |start: Option<PressStart>| -> Vec<Value> {
@@ -472,27 +346,9 @@ fn charge_result(setup: &Setup, name: &str, report: &ChargeReport) -> Value {
         })
     };
     let last = report.presses.len().saturating_sub(1);
-    let v = |x: Option<Volts>| x.map(|v| v.0);
     json!({
         "schema": 1, "case": name, "kind": "charge",
-        "summary": {
-            "presses": report.presses.len(), "full_presses": report.full_presses, "lit_s": report.lit.0,
-            "energy_delivered_J": report.ledger.load_lit.0, "energy_J": ledger_json(&report.ledger),
-            "ledger_residual_rel": report.ledger.residual(), "recharge_mark_V": v(report.recharge_mark),
-            "mark_relaxed_before_V": v(report.mark_relaxed_before),
-            "mark_in_use_before_V": v(report.mark_in_use_before), "mark_in_use_after_V": v(report.mark_in_use_after),
-            "soc_left": report.soc_left, "charge_left_Ah": report.charge_left.0,
-            "first_imperfect": report.first_imperfect.map(|k| {
-                let p = &report.presses[k];
-                json!({
-                    "n": p.number, "why": p.summary.not_full.map(|w| not_full_name(setup, w)),
-                    "t_end_s": p.summary.end_time.0,
-                })
-            }),
-            "ended": ended, "clock_s": report.clock.0, "T_cell_max_C": report.cell_temperature_max.0,
-            "T_switch_max_C": report.switch_temperature_max.0, "T_switch2_max_C": report.second_temperature_max.0,
-            "steps": report.steps,
-        },
+        "summary": charge_json(setup, report),
         "presses": presses,
         "events_first_press": events_of(charge::press_start(setup, 0)),
         "events_last_press": events_of(charge::press_start(setup, last)),

@@ -15,3 +15,4 @@ pub mod report;
 pub mod setup;
 pub mod units;
 pub mod verdict;
+pub mod wiring;

@@ -1,0 +1,629 @@
+//! From what is entered to setups that can be simulated, or every fault at once.
+//!
+//! Two setups come out: nominal parts, and weak ones with every tolerance at its unfavourable end.
+
+use strikeline_core::board::{Board, OverDischarge, Release, SensePoint, Stage, Threshold};
+use strikeline_core::cell::{Branch, Cell};
+use strikeline_core::load::{LitDraw, Load};
+use strikeline_core::math::{Monotone, Polyline, exp};
+use strikeline_core::setup::{Arrangement, Path, Setup, Use};
+use strikeline_core::units::{AmpHours, Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
+use strikeline_core::wiring::{self, Conductor};
+
+use crate::catalogue::{Kind, field};
+use crate::design::Design;
+use crate::quantity::{self, Shown, Toleranced};
+use crate::shipped;
+
+/// What is wrong with one field.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Fault {
+    /// Key of the field.
+    pub key: &'static str,
+    /// A sentence: what was got and what would be accepted.
+    pub message: String,
+}
+
+/// A design that can be simulated.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Checked {
+    /// Every value as entered.
+    pub nominal: Setup,
+    /// Every tolerance at its unfavourable end at once.
+    pub weak: Setup,
+}
+
+/// Checks a design.
+///
+/// # Errors
+/// Every fault, each at its field.
+pub fn check(design: &Design) -> Result<Checked, Vec<Fault>> {
+    let mut reader = Reader { design, faults: Vec::new() };
+    let checked = reader.setups();
+    match checked {
+        Some(checked) if reader.faults.is_empty() => Ok(checked),
+        _ => Err(reader.faults),
+    }
+}
+
+struct Reader<'d> {
+    design: &'d Design,
+    faults: Vec<Fault>,
+}
+
+fn range(shown: &Shown, min: f64, max: f64) -> String {
+    format!("{} to {}", quantity::format(min, shown), quantity::format(max, shown))
+}
+
+impl Reader<'_> {
+    fn fault(&mut self, key: &'static str, message: String) {
+        self.faults.push(Fault { key, message });
+    }
+
+    /// A quantity with its tolerance; `None` where it is optional and empty, or faulty.
+    fn toleranced(&mut self, key: &'static str) -> Option<Toleranced> {
+        let (Some(field), text) = (field(key), self.design.get(key).trim()) else { return None };
+        let Kind::Quantity { shown, min, max, optional, tolerance } = field.kind else { return None };
+        if text.is_empty() && optional {
+            return None;
+        }
+        let read = match tolerance {
+            Some(usual) => quantity::parse_toleranced(text, &shown, usual),
+            None => quantity::parse(text, &shown).map(|v| Toleranced { typical: v, min: v, max: v }),
+        };
+        match read {
+            Ok(t) if t.typical < min || t.typical > max => {
+                let got = quantity::quoted(text);
+                let message = format!("{} is {got}; accepted is {}", field.label, range(&shown, min, max));
+                self.fault(key, message);
+                None
+            }
+            Ok(t) => Some(Toleranced {
+                typical: t.typical,
+                min: t.min.clamp(min, max),
+                max: t.max.clamp(min, max),
+            }),
+            Err(error) => {
+                let message = format!("{}: {error}, {}", field.label, range(&shown, min, max));
+                self.fault(key, message);
+                None
+            }
+        }
+    }
+
+    fn value(&mut self, key: &'static str) -> Option<f64> {
+        self.toleranced(key).map(|t| t.typical)
+    }
+
+    fn count(&mut self, key: &'static str) -> Option<u32> {
+        let value = self.value(key)?;
+        if value.fract() == 0.0 {
+            // The catalogue's range fits.
+            return Some(value as u32);
+        }
+        self.fault(key, format!("{value} is not a whole number; accepted is 1, 2, 3, …"));
+        None
+    }
+
+    fn choice(&mut self, key: &'static str) -> &str {
+        let text = self.design.get(key).trim();
+        let Some(Kind::Choice(list)) = field(key).map(|f| f.kind) else { return "" };
+        if let Some((found, _)) = list.iter().find(|(k, _)| *k == text) {
+            return found;
+        }
+        let accepted: Vec<&str> = list.iter().map(|(k, _)| *k).collect();
+        let message = format!("“{}” is not one of {}", quantity::quoted(text), accepted.join(", "));
+        self.fault(key, message);
+        list[0].0
+    }
+
+    /// The rows of a table; `None` where it is empty or faulty.
+    fn table(&mut self, key: &'static str) -> Option<(Vec<f64>, Vec<f64>)> {
+        let text = self.design.get(key);
+        let Some(Kind::Table { x, y, .. }) = field(key).map(|f| f.kind) else { return None };
+        let mut columns = (Vec::new(), Vec::new());
+        for (k, line) in text.lines().map(str::trim).filter(|l| !l.is_empty()).enumerate() {
+            match row(line, &x, &y) {
+                Ok((a, b)) => {
+                    columns.0.push(a);
+                    columns.1.push(b);
+                }
+                Err(why) => {
+                    self.fault(key, format!("line {}: {why}", k + 1));
+                    return None;
+                }
+            }
+        }
+        if columns.0.is_empty() {
+            return None;
+        }
+        if columns.0.len() > 500 {
+            self.fault(key, format!("{} lines; accepted are at most 500", columns.0.len()));
+            return None;
+        }
+        if let Some(k) = (1..columns.0.len()).find(|&k| columns.0[k] <= columns.0[k - 1]) {
+            self.fault(key, format!("line {}: the first column must rise from line to line", k + 1));
+            return None;
+        }
+        Some(columns)
+    }
+
+    fn polyline(&mut self, key: &'static str, min: f64, max: f64) -> Option<Polyline> {
+        let (x, y) = self.table(key)?;
+        if let Some(k) = y.iter().position(|v| !(min..=max).contains(v)) {
+            self.fault(
+                key,
+                format!("line {}: the second column is outside {min} to {max} (base unit)", k + 1),
+            );
+            return None;
+        }
+        match Polyline::new(x, y) {
+            Ok(line) => Some(line),
+            Err(error) => {
+                self.fault(key, error.to_string());
+                None
+            }
+        }
+    }
+
+    fn setups(&mut self) -> Option<Checked> {
+        let cells = self.cell();
+        let arrangement = match self.choice("board.arrangement") {
+            "load_at_cell" => Arrangement::LoadAtCell,
+            "switch_bridged" => Arrangement::SwitchBridged,
+            "no_board" => Arrangement::NoBoard,
+            _ => Arrangement::ThroughBoard,
+        };
+        let boards = self.board();
+        let seconds = if self.choice("second.fitted") == "yes" { Some(self.second()) } else { None };
+        let paths = self.paths();
+        let loads = self.load();
+        let supply = self.value("board.supply");
+        let usage = self.usage(if arrangement == Arrangement::NoBoard { Some(0.0) } else { supply });
+        let (cell, weak_cell) = cells?;
+        let (board, weak_board) = boards?;
+        let (path, weak_path) = paths?;
+        let (load, weak_load) = loads?;
+        let (second, weak_second) = match seconds {
+            Some(pair) => pair.map(|(a, b)| (Some(a), Some(b)))?,
+            None => (None, None),
+        };
+        let usage = usage?;
+        let fitted = arrangement != Arrangement::NoBoard;
+        let nominal = Setup {
+            cell,
+            second_protector: second,
+            path,
+            board: fitted.then_some(board),
+            arrangement,
+            load,
+            usage,
+        };
+        let weak = Setup {
+            cell: weak_cell,
+            second_protector: weak_second,
+            path: weak_path,
+            board: fitted.then_some(weak_board),
+            arrangement,
+            load: weak_load,
+            usage,
+        };
+        Some(Checked { nominal, weak })
+    }
+
+    fn cell(&mut self) -> Option<(Cell, Cell)> {
+        let key = self.choice("cell.chemistry").to_string();
+        let kind = shipped::chemistry(&key).unwrap_or(&shipped::CHEMISTRIES[0]);
+        let capacity = self.value("cell.capacity");
+        let parallel = self.count("cell.parallel");
+        let health = self.value("cell.health");
+        let growth = self.value("cell.growth");
+        let continuous = self.value("cell.continuous");
+        let heat = self.value("cell.heat");
+        let cooling = self.value("cell.cooling");
+        let activations = (self.value("cell.r0_activation"), self.value("cell.branch_activation"));
+        let entropy = self.polyline("cell.entropy", -0.05, 0.05);
+        let shapes =
+            (self.polyline("cell.r0_shape", 0.01, 100.0), self.polyline("cell.branch_shape", 0.01, 100.0));
+        let ocv = self.ocv();
+        let mut cell = kind.cell(AmpHours(capacity?));
+        cell.parallel = parallel?;
+        cell.health = health?;
+        cell.growth = growth?;
+        cell.heat_capacity_j_per_k = heat.unwrap_or(cell.heat_capacity_j_per_k * f64::from(cell.parallel));
+        cell.cooling_w_per_k = cooling.unwrap_or(cell.cooling_w_per_k * f64::from(cell.parallel));
+        cell.limits.continuous = continuous.map(Amps);
+        if let Some(ocv) = ocv {
+            cell.ocv = ocv;
+        }
+        if let Some(entropy) = entropy {
+            cell.entropy = entropy;
+        }
+        if let Some(shape) = shapes.0 {
+            cell.r0_shape = shape;
+        }
+        if let Some(shape) = shapes.1 {
+            cell.branch_shape = shape;
+        }
+        cell.r0_activation = activations.0.unwrap_or(cell.r0_activation);
+        cell.branch_activation = activations.1.unwrap_or(cell.branch_activation);
+        let more = self.resistance(&mut cell)?;
+        let mut weak = cell.clone();
+        scale(&mut weak, more);
+        Some((cell, weak))
+    }
+
+    /// A voltage curve of the builder's own.
+    fn ocv(&mut self) -> Option<Monotone> {
+        let (x, y) = self.table("cell.ocv")?;
+        let ends = (x.first().copied().unwrap_or(1.0), x.last().copied().unwrap_or(0.0));
+        if ends.0 > 0.0 || ends.1 < 1.0 {
+            self.fault(
+                "cell.ocv",
+                format!("charge goes from {} to {}; accepted is from 0 to 1", ends.0, ends.1),
+            );
+        } else if let Some(k) = (1..y.len()).find(|&k| y[k] <= y[k - 1]) {
+            self.fault("cell.ocv", format!("line {}: the voltage must rise with the charge", k + 1));
+        } else if y.iter().any(|v| !(0.5..=60.0).contains(v)) {
+            self.fault("cell.ocv", "a voltage is outside 0.5 V to 60 V".into());
+        } else {
+            match Monotone::new(x, y) {
+                Ok(curve) => return Some(curve),
+                Err(error) => self.fault("cell.ocv", error.to_string()),
+            }
+        }
+        None
+    }
+
+    /// Sets the cell's resistances by the chosen route; by how much they may be higher.
+    fn resistance(&mut self, cell: &mut Cell) -> Option<f64> {
+        match self.choice("cell.route") {
+            "measured" => {
+                let measured = self.toleranced("cell.r_10s");
+                let tolerance = self.value("cell.tolerance");
+                let Some(measured) = measured else {
+                    if self.design.get("cell.r_10s").trim().is_empty() {
+                        let message = "nothing is entered; accepted is a resistance in mΩ, e.g. 60 mΩ";
+                        self.fault("cell.r_10s", message.into());
+                    }
+                    return None;
+                };
+                scale(cell, measured.typical / after(cell, 10.0));
+                Some((measured.max / measured.typical).max(1.0 + tolerance?.min(0.1)))
+            }
+            "sag" => {
+                let keys = ["cell.sag_rested", "cell.sag_loaded", "cell.sag_current", "cell.sag_time"];
+                let values = keys.map(|key| self.value(key));
+                for (key, value) in keys.iter().zip(&values) {
+                    if value.is_none() && self.design.get(key).trim().is_empty() {
+                        self.fault(key, "nothing is entered; the three readings belong together".into());
+                    }
+                }
+                let [rested, loaded, current, time] = values;
+                let (rested, loaded, current, time) = (rested?, loaded?, current?, time?);
+                if loaded >= rested {
+                    let message = format!(
+                        "{loaded} V under load is not below {rested} V rested; accepted is less than that"
+                    );
+                    self.fault("cell.sag_loaded", message);
+                    return None;
+                }
+                let each = (rested - loaded) / current * f64::from(cell.parallel);
+                scale(cell, each / after(cell, time));
+                Some(1.1)
+            }
+            "branches" => {
+                let r0 = self.value("cell.r0");
+                let pairs = [("cell.r1", "cell.tau1"), ("cell.r2", "cell.tau2"), ("cell.r3", "cell.tau3")]
+                    .map(|(r, tau)| (self.value(r), self.value(tau)));
+                let Some(r0) = r0 else {
+                    if self.design.get("cell.r0").trim().is_empty() {
+                        self.fault("cell.r0", "nothing is entered; accepted is a resistance in mΩ".into());
+                    }
+                    return None;
+                };
+                cell.r0 = Ohms(r0);
+                cell.branches = pairs
+                    .into_iter()
+                    .filter_map(|(r, tau)| {
+                        let (resistance, time_constant) = (Ohms(r?), Seconds(tau?));
+                        (resistance.0 > 0.0).then_some(Branch { resistance, time_constant })
+                    })
+                    .collect();
+                Some(1.1)
+            }
+            _ => Some(1.0 + self.value("cell.tolerance")?),
+        }
+    }
+
+    fn stage(&mut self, name: &str, limit: &'static str, delay: &'static str) -> Option<(Stage, Stage)> {
+        let amps = limit == "board.limit4";
+        let threshold = self.toleranced(limit);
+        let delay = self.toleranced(delay);
+        let (threshold, delay) = (threshold?, delay?);
+        let of = |value: f64, delay: f64| Stage {
+            name: name.to_string(),
+            threshold: if amps { Threshold::Current(Amps(value)) } else { Threshold::Sense(Volts(value)) },
+            delay: Seconds(delay),
+        };
+        Some((of(threshold.typical, delay.typical), of(threshold.min, delay.min)))
+    }
+
+    fn over_discharge(
+        &mut self,
+        at: &'static str,
+        delay: &'static str,
+    ) -> (Option<OverDischarge>, Option<OverDischarge>) {
+        let (threshold, delay) = (self.toleranced(at), self.toleranced(delay));
+        let (Some(threshold), Some(delay)) = (threshold, delay) else { return (None, None) };
+        let of = |v: f64, s: f64| OverDischarge { threshold: Volts(v), delay: Seconds(s) };
+        (Some(of(threshold.typical, delay.typical)), Some(of(threshold.max, delay.min)))
+    }
+
+    fn board(&mut self) -> Option<(Board, Board)> {
+        let rows = [
+            ("over_current", "board.stage1", "board.delay1"),
+            ("over_current_2", "board.stage2", "board.delay2"),
+            ("short", "board.stage3", "board.delay3"),
+            ("over_current_amps", "board.limit4", "board.delay4"),
+        ];
+        let stages: Vec<_> =
+            rows.into_iter().filter_map(|(name, limit, delay)| self.stage(name, limit, delay)).collect();
+        let od = self.over_discharge("board.od", "board.od_delay");
+        let pair = self.toleranced("board.pair");
+        let pairs = self.count("board.pairs");
+        let on = self.polyline("board.on", 1e-5, 10.0);
+        let sense = match self.choice("board.sense") {
+            "shunt" => SensePoint::Shunt,
+            _ => SensePoint::Pair,
+        };
+        let shunt = self.value("board.shunt");
+        if sense == SensePoint::Shunt && shunt == Some(0.0) {
+            self.fault(
+                "board.shunt",
+                "0 mΩ gives a board that senses over a shunt nothing to see; accepted is more".into(),
+            );
+        }
+        let release = match self.choice("board.release") {
+            "retry" => Release::Retry { every: Seconds(self.value("board.retry").unwrap_or(1.0)) },
+            "charger" => Release::ChargerNeeded,
+            _ => Release::LoadRemoved,
+        };
+        let alpha = self.value("board.alpha");
+        let thermal = self.value("board.thermal");
+        let time = self.value("board.thermal_time");
+        if let Some(k) = on.as_ref().and_then(|on| (1..on.y().len()).find(|&k| on.y()[k] > on.y()[k - 1])) {
+            self.fault("board.on", format!("line {}: resistance must not rise with the gate voltage", k + 1));
+        }
+        let pair = pair?;
+        let nominal = Board {
+            on_resistance: on.clone().unwrap_or_else(|| usual_on_resistance(pair.typical)),
+            alpha_per_k: alpha?,
+            pairs: pairs?,
+            thermal_k_per_w: thermal?,
+            thermal_time: Seconds(time?),
+            shunt: Ohms(shunt?),
+            sense,
+            stages: stages.iter().map(|s| s.0.clone()).collect(),
+            over_discharge: od.0,
+            release,
+        };
+        let weak = Board {
+            on_resistance: match on {
+                Some(on) => on,
+                None => usual_on_resistance(pair.max),
+            },
+            stages: stages.into_iter().map(|s| s.1).collect(),
+            over_discharge: od.1,
+            ..nominal.clone()
+        };
+        Some((nominal, weak))
+    }
+
+    fn second(&mut self) -> Option<(Board, Board)> {
+        let stage = self.stage("over_current", "second.stage1", "second.delay1");
+        let od = self.over_discharge("second.od", "second.od_delay");
+        let pair = self.toleranced("second.pair");
+        let pairs = self.count("second.pairs");
+        let pair = pair?;
+        let nominal = Board {
+            on_resistance: usual_on_resistance(pair.typical),
+            alpha_per_k: 0.004,
+            pairs: pairs?,
+            thermal_k_per_w: 60.0,
+            thermal_time: Seconds(8.0),
+            shunt: Ohms(0.0),
+            sense: SensePoint::Pair,
+            stages: stage.iter().map(|s| s.0.clone()).collect(),
+            over_discharge: od.0,
+            release: Release::LoadRemoved,
+        };
+        let weak = Board {
+            on_resistance: usual_on_resistance(pair.max),
+            stages: stage.into_iter().map(|s| s.1).collect(),
+            over_discharge: od.1,
+            ..nominal.clone()
+        };
+        Some((nominal, weak))
+    }
+
+    fn paths(&mut self) -> Option<(Path, Path)> {
+        let conductor = match self.choice("leads.conductor") {
+            "tinned" => Conductor::FlexibleTinned,
+            "solid" => Conductor::Solid,
+            "ideal" => Conductor::Ideal,
+            _ => Conductor::Flexible,
+        };
+        let t = self.value("leads.temperature");
+        let cell = (self.value("leads.cell_length"), self.value("leads.cell_section"));
+        let load = (self.value("leads.load_length"), self.value("leads.load_section"));
+        let joints = (self.value("leads.cell_joints"), self.value("leads.load_joints"));
+        let switch = self.toleranced("leads.switch");
+        let t = Celsius(t?);
+        let switch = switch?;
+        let ahead = wiring::lead(cell.0?, cell.1?, conductor, t) + Ohms(joints.0?);
+        let after = wiring::lead(load.0?, load.1?, conductor, t) + Ohms(joints.1?);
+        let of = |switch: f64| Path { ahead, after: after + Ohms(switch) };
+        let paths = (of(switch.typical), of(switch.max));
+        // A path of nothing at all has no current to solve for.
+        if paths.0.ahead.0 + paths.0.after.0 <= 0.0 {
+            self.fault(
+                "leads.load_joints",
+                "leads, joints and switch are all 0; accepted is more than 0 mΩ together".into(),
+            );
+            return None;
+        }
+        Some(paths)
+    }
+
+    fn load(&mut self) -> Option<(Load, Load)> {
+        let lit = self.lit();
+        let keys =
+            ["load.start", "load.hold", "load.strike_time", "load.unlit", "load.surge", "load.surge_time"];
+        let [start, hold, strike_time, unlit, surge, surge_time] = keys.map(|key| self.value(key));
+        let strike = self.toleranced("load.strike");
+        let stall = self.value("load.stall");
+        let capacitance = self.value("load.capacitance");
+        let esr = self.value("load.esr");
+        let peak = self.value("load.peak");
+        if let (Some(strike), Some(hold)) = (strike, hold)
+            && strike.min <= hold
+        {
+            let least = strike.min;
+            let message =
+                format!("{hold} V is not below the strike voltage, {least} V at its least; accepted is less");
+            self.fault("load.hold", message);
+        }
+        if let (Some(hold), Some(start)) = (hold, start)
+            && hold <= start
+        {
+            self.fault(
+                "load.start",
+                format!("{start} V is not below the hold voltage, {hold} V; accepted is less"),
+            );
+        }
+        let lit = lit?;
+        let (hold, esr) = (hold?, esr?);
+        if esr > 0.0 && falling_slope(&lit, hold) * esr >= 1.0 {
+            let message = "it times the fall of the lit draw reaches 1, so the voltage has no single value; accepted is less";
+            self.fault("load.esr", message.into());
+            return None;
+        }
+        let strike = strike?;
+        let nominal = Load {
+            lit,
+            unlit: Ohms(unlit?),
+            stall: stall.map(Ohms),
+            start: Volts(start?),
+            strike: Volts(strike.typical),
+            strike_time: Seconds(strike_time?),
+            hold: Volts(hold),
+            surge: Amps(surge?),
+            surge_time: Seconds(surge_time?),
+            capacitance: Farads(capacitance?),
+            esr: Ohms(esr),
+            peak_factor: peak?,
+        };
+        let weak = Load { strike: Volts(strike.max), ..nominal.clone() };
+        Some((nominal, weak))
+    }
+
+    fn lit(&mut self) -> Option<LitDraw> {
+        match self.choice("load.law") {
+            "current" => self.value("load.current").map(|i| LitDraw::Current(Amps(i))),
+            "power" => self.value("load.power").map(|p| LitDraw::Power(Watts(p))),
+            "resistance" => self.value("load.resistance").map(|r| LitDraw::Resistance(Ohms(r))),
+            _ => {
+                let faults = self.faults.len();
+                let (x, y) = match self.table("load.table") {
+                    Some(columns) => columns,
+                    None => {
+                        if self.faults.len() == faults {
+                            let message = "nothing is entered; accepted is a pair of volts and amps a line, e.g. 3.6 2.7";
+                            self.fault("load.table", message.into());
+                        }
+                        return None;
+                    }
+                };
+                if x[0] < 0.1 || y.iter().any(|i| !(1e-6..=500.0).contains(i)) || x.iter().any(|v| *v > 60.0)
+                {
+                    let message = "a number is outside 0.1 V to 60 V or 0.000001 A to 500 A";
+                    self.fault("load.table", message.into());
+                    return None;
+                }
+                match Polyline::new(x, y) {
+                    Ok(line) => Some(LitDraw::Table(line)),
+                    Err(error) => {
+                        self.fault("load.table", error.to_string());
+                        None
+                    }
+                }
+            }
+        }
+    }
+
+    fn usage(&mut self, standby: Option<f64>) -> Option<Use> {
+        let (press, rest) = (self.value("use.press"), self.value("use.rest"));
+        let ambient = self.value("use.ambient");
+        let presses = self.count("use.presses");
+        Some(Use {
+            press: Seconds(press?),
+            rest: Seconds(rest?),
+            ambient: Celsius(ambient?),
+            standby: Amps(standby?),
+            max_presses: presses?,
+        })
+    }
+}
+
+/// The steepest fall of a lit draw, in A/V, from the hold voltage up.
+fn falling_slope(lit: &LitDraw, hold: f64) -> f64 {
+    match lit {
+        LitDraw::Current(_) | LitDraw::Resistance(_) => 0.0,
+        LitDraw::Power(p) => p.0 / (hold * hold),
+        LitDraw::Table(line) => (1..line.x().len())
+            .map(|k| (line.y()[k - 1] - line.y()[k]) / (line.x()[k] - line.x()[k - 1]))
+            .fold(0.0, f64::max),
+    }
+}
+
+fn row(line: &str, x: &Shown, y: &Shown) -> Result<(f64, f64), String> {
+    let parts: Vec<&str> = if line.contains(';') || line.contains('\t') {
+        line.split([';', '\t']).map(str::trim).filter(|p| !p.is_empty()).collect()
+    } else {
+        line.split_whitespace().collect()
+    };
+    match parts[..] {
+        [a, b] => {
+            let a = quantity::parse(a.trim_end_matches(','), x).map_err(|e| e.to_string())?;
+            let b = quantity::parse(b, y).map_err(|e| e.to_string())?;
+            Ok((a, b))
+        }
+        _ => Err(format!("“{}” is not two numbers", quantity::quoted(line))),
+    }
+}
+
+/// Resistance that one cell shows a time after a step, at half charge and 25 °C.
+fn after(cell: &Cell, time_s: f64) -> f64 {
+    cell.branches
+        .iter()
+        .fold(cell.r0.0, |sum, b| sum + b.resistance.0 * (1.0 - exp(-time_s / b.time_constant.0)))
+}
+
+fn scale(cell: &mut Cell, by: f64) {
+    cell.r0 = cell.r0 * by;
+    for branch in &mut cell.branches {
+        branch.resistance = branch.resistance * by;
+    }
+}
+
+/// A pair's resistance over its gate voltage, through a figure at 3.8 V.
+///
+/// The shape is that of the best table found: a source-to-source pair, typical values 17, 18, 19 and
+/// 22 mΩ at 4.5, 3.8, 3.1 and 2.5 V (data sheet FC4B22270L1, TT4-ZZ-02012 rev. 1). Below 2.5 V it goes on
+/// rising as fast, down to 2 V.
+fn usual_on_resistance(at_3_8: f64) -> Polyline {
+    let x = vec![2.0, 2.5, 3.1, 3.8, 4.5];
+    let y = [24.5, 22.0, 19.0, 18.0, 17.0].map(|r| r / 18.0 * at_3_8).to_vec();
+    Polyline::new(x, y).expect("five rising places")
+}

@@ -1,0 +1,462 @@
+//! What people type, as a number with its unit, and back.
+//!
+//! A bare number is in the field's own unit (`45` in a field shown in mΩ is 45 mΩ); a bare prefix is one
+//! of the base unit (`150m` in a field of volts is 150 mV). Comma and point are both decimal signs.
+
+/// What kind of quantity a text stands for. The number is kept in the base unit.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Unit {
+    /// V
+    Volt,
+    /// A
+    Ampere,
+    /// Ω
+    Ohm,
+    /// Ah
+    AmpereHour,
+    /// F
+    Farad,
+    /// s
+    Second,
+    /// W
+    Watt,
+    /// °C
+    Celsius,
+    /// m
+    Metre,
+    /// mm²; AWG is accepted
+    Section,
+    /// J/K
+    HeatCapacity,
+    /// W/K
+    Cooling,
+    /// K/W
+    ThermalResistance,
+    /// J/mol
+    Activation,
+    /// 1/K
+    PerKelvin,
+    /// V/K
+    VoltPerKelvin,
+    /// A plain ratio; `%` is accepted
+    Ratio,
+    /// A whole number
+    Count,
+}
+
+/// The spellings of a unit with what they are worth in the base unit, the preferred first.
+fn spellings(unit: Unit) -> &'static [(&'static str, f64)] {
+    match unit {
+        Unit::Volt => &[("V", 1.0), ("volt", 1.0), ("volts", 1.0)],
+        Unit::Ampere => &[("A", 1.0), ("amp", 1.0), ("amps", 1.0)],
+        Unit::Ohm => &[("Ω", 1.0), ("\u{2126}", 1.0), ("ohm", 1.0), ("Ohm", 1.0), ("ohms", 1.0), ("R", 1.0)],
+        Unit::AmpereHour => &[("Ah", 1.0), ("AH", 1.0), ("ah", 1.0)],
+        Unit::Farad => &[("F", 1.0)],
+        Unit::Second => &[("s", 1.0), ("sec", 1.0), ("min", 60.0), ("h", 3600.0), ("d", 86_400.0)],
+        Unit::Watt => &[("W", 1.0)],
+        Unit::Celsius => &[("°C", 1.0), ("℃", 1.0), ("C", 1.0), ("degC", 1.0), ("deg C", 1.0), ("°", 1.0)],
+        Unit::Metre => &[("m", 1.0)],
+        Unit::Section => &[("mm²", 1.0), ("mm2", 1.0), ("mm^2", 1.0), ("sqmm", 1.0), ("qmm", 1.0)],
+        Unit::HeatCapacity => &[("J/K", 1.0)],
+        Unit::Cooling => &[("W/K", 1.0)],
+        Unit::ThermalResistance => &[("K/W", 1.0), ("°C/W", 1.0)],
+        Unit::Activation => &[("J/mol", 1.0)],
+        Unit::PerKelvin => &[("1/K", 1.0), ("/K", 1.0), ("%/K", 0.01), ("%/°C", 0.01)],
+        Unit::VoltPerKelvin => &[("V/K", 1.0)],
+        Unit::Ratio => &[("", 1.0), ("%", 0.01), ("×", 1.0), ("x", 1.0)],
+        Unit::Count => &[("", 1.0)],
+    }
+}
+
+/// What a unit measures, for a sentence.
+fn noun(unit: Unit) -> &'static str {
+    match unit {
+        Unit::Volt => "a voltage",
+        Unit::Ampere => "a current",
+        Unit::Ohm => "a resistance",
+        Unit::AmpereHour => "a capacity",
+        Unit::Farad => "a capacitance",
+        Unit::Second => "a time",
+        Unit::Watt => "a power",
+        Unit::Celsius => "a temperature",
+        Unit::Metre => "a length",
+        Unit::Section => "a section",
+        Unit::HeatCapacity => "a heat capacity",
+        Unit::Cooling => "a cooling in W/K",
+        Unit::ThermalResistance => "a thermal resistance",
+        Unit::Activation => "an activation energy",
+        Unit::PerKelvin => "a temperature coefficient",
+        Unit::VoltPerKelvin => "a voltage per kelvin",
+        Unit::Ratio => "a ratio",
+        Unit::Count => "a whole number",
+    }
+}
+
+const UNITS: [Unit; 16] = [
+    Unit::Volt,
+    Unit::Ampere,
+    Unit::Ohm,
+    Unit::AmpereHour,
+    Unit::Farad,
+    Unit::Second,
+    Unit::Watt,
+    Unit::Celsius,
+    Unit::Metre,
+    Unit::Section,
+    Unit::HeatCapacity,
+    Unit::Cooling,
+    Unit::ThermalResistance,
+    Unit::Activation,
+    Unit::PerKelvin,
+    Unit::VoltPerKelvin,
+];
+
+const PREFIXES: [(&str, f64); 9] = [
+    ("p", 1e-12),
+    ("n", 1e-9),
+    ("µ", 1e-6),
+    ("μ", 1e-6),
+    ("u", 1e-6),
+    ("m", 1e-3),
+    ("c", 1e-2),
+    ("k", 1e3),
+    ("M", 1e6),
+];
+
+/// How a field shows its quantity: the unit with a prefix in front.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Shown {
+    /// The unit.
+    pub unit: Unit,
+    /// As it stands behind a number, such as `mΩ`.
+    pub text: &'static str,
+    /// What one of it is worth in the base unit.
+    pub worth: f64,
+}
+
+/// Why a text is not a quantity.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+pub enum QuantityError {
+    /// Nothing there.
+    #[error("nothing is entered; accepted is {accepted}")]
+    Empty {
+        /// What would be accepted.
+        accepted: String,
+    },
+    /// No number at the front.
+    #[error("“{text}” does not begin with a number; accepted is {accepted}")]
+    NoNumber {
+        /// What was typed.
+        text: String,
+        /// What would be accepted.
+        accepted: String,
+    },
+    /// Both signs are there: one of them would have to be a thousands separator.
+    #[error("“{text}” has both comma and point; write one decimal sign and no separators, e.g. 1234.5")]
+    Ambiguous {
+        /// What was typed.
+        text: String,
+    },
+    /// A unit of another kind.
+    #[error("{text} is {is}; accepted is {accepted}")]
+    OtherKind {
+        /// What was typed.
+        text: String,
+        /// What it measures.
+        is: &'static str,
+        /// What would be accepted.
+        accepted: String,
+    },
+    /// A unit that is none.
+    #[error("“{unit}” is not a unit known here; accepted is {accepted}")]
+    UnknownUnit {
+        /// The part behind the number.
+        unit: String,
+        /// What would be accepted.
+        accepted: String,
+    },
+    /// Not finite.
+    #[error("{text} is too large a number")]
+    TooLarge {
+        /// What was typed.
+        text: String,
+    },
+}
+
+/// A short part of what was typed, for a message.
+pub(crate) fn quoted(text: &str) -> String {
+    let mut short: String = text.chars().filter(|c| !c.is_control()).take(24).collect();
+    if text.chars().count() > 24 {
+        short.push('…');
+    }
+    short
+}
+
+fn accepted(shown: &Shown) -> String {
+    let noun = noun(shown.unit);
+    match shown.unit {
+        Unit::Section => "a section in mm² or AWG, e.g. 0.75 mm² or AWG 18".into(),
+        Unit::Ratio => "a number or a percentage, e.g. 0.8 or 80 %".into(),
+        Unit::Count => "a whole number, e.g. 2".into(),
+        _ => format!("{noun} in {}", shown.text),
+    }
+}
+
+fn prefixed(unit: &str, of: Unit) -> Option<f64> {
+    if let Some((_, worth)) = spellings(of).iter().find(|(name, _)| *name == unit) {
+        return Some(*worth);
+    }
+    if matches!(of, Unit::Celsius | Unit::Ratio | Unit::Count | Unit::Section | Unit::PerKelvin) {
+        return None;
+    }
+    PREFIXES.iter().find_map(|(prefix, factor)| {
+        let rest = unit.strip_prefix(prefix)?;
+        let (_, worth) = spellings(of).iter().find(|(name, _)| *name == rest)?;
+        Some(factor * worth)
+    })
+}
+
+/// Splits a text into the number in front and what follows.
+fn split(text: &str) -> Option<(f64, &str)> {
+    let bytes = text.as_bytes();
+    let mut end = 0;
+    let mut digits = false;
+    if matches!(bytes.first(), Some(b'+' | b'-')) {
+        end = 1;
+    }
+    while end < bytes.len() && (bytes[end].is_ascii_digit() || bytes[end] == b'.') {
+        digits |= bytes[end].is_ascii_digit();
+        end += 1;
+    }
+    if !digits {
+        return None;
+    }
+    // An exponent only where digits follow: 3e is 3 of something, not a number.
+    if matches!(bytes.get(end), Some(b'e' | b'E')) {
+        let mut k = end + 1;
+        if matches!(bytes.get(k), Some(b'+' | b'-')) {
+            k += 1;
+        }
+        let from = k;
+        while k < bytes.len() && bytes[k].is_ascii_digit() {
+            k += 1;
+        }
+        if k > from {
+            end = k;
+        }
+    }
+    let number = text[..end].parse().ok()?;
+    Some((number, text[end..].trim()))
+}
+
+/// The text with plain spaces, a point as decimal sign and an ASCII minus.
+fn plain(text: &str) -> Result<String, QuantityError> {
+    let cleaned: String = text
+        .trim()
+        .chars()
+        .map(|c| match c {
+            '\u{a0}' | '\u{2009}' | '\u{202f}' | '\t' => ' ',
+            '\u{2212}' | '–' => '-',
+            c => c,
+        })
+        .collect();
+    let commas = cleaned.matches(',').count();
+    if commas > 1 || (commas == 1 && cleaned.contains('.')) {
+        return Err(QuantityError::Ambiguous { text: quoted(text) });
+    }
+    Ok(cleaned.replace(',', "."))
+}
+
+/// The value of a text in the base unit.
+///
+/// # Errors
+/// A sentence that says what was typed and what would be accepted.
+pub fn parse(text: &str, shown: &Shown) -> Result<f64, QuantityError> {
+    let cleaned = plain(text)?;
+    if cleaned.is_empty() {
+        return Err(QuantityError::Empty { accepted: accepted(shown) });
+    }
+    if shown.unit == Unit::Section
+        && let Some(area) = awg_text(&cleaned)
+    {
+        return Ok(area);
+    }
+    let Some((number, unit)) = split(&cleaned) else {
+        return Err(QuantityError::NoNumber { text: quoted(text), accepted: accepted(shown) });
+    };
+    let unit = unit.strip_prefix(' ').unwrap_or(unit);
+    let worth = if unit.is_empty() {
+        shown.worth
+    } else if let Some(worth) = prefixed(unit, shown.unit) {
+        worth
+    } else if let Some((_, factor)) = PREFIXES.iter().find(|(p, _)| *p == unit && shown.unit != Unit::Metre) {
+        if matches!(shown.unit, Unit::Section | Unit::Celsius | Unit::Ratio | Unit::Count) {
+            return Err(other(&cleaned, unit, text, shown));
+        }
+        *factor
+    } else {
+        return Err(other(&cleaned, unit, text, shown));
+    };
+    let value = number * worth;
+    if value.is_finite() { Ok(value) } else { Err(QuantityError::TooLarge { text: quoted(text) }) }
+}
+
+fn other(cleaned: &str, unit: &str, text: &str, shown: &Shown) -> QuantityError {
+    let is = if cleaned.to_ascii_lowercase().contains("awg") {
+        Some("a section")
+    } else {
+        UNITS.iter().find(|u| prefixed(unit, **u).is_some()).map(|u| noun(*u))
+    };
+    match is {
+        Some(is) => QuantityError::OtherKind { text: quoted(text.trim()), is, accepted: accepted(shown) },
+        None => QuantityError::UnknownUnit { unit: quoted(unit), accepted: accepted(shown) },
+    }
+}
+
+/// `AWG 20` or `20 AWG`, as an area in mm²; gauges 0 to 40.
+fn awg_text(text: &str) -> Option<f64> {
+    let lower = text.to_ascii_lowercase();
+    let rest = lower.strip_prefix("awg").or_else(|| lower.strip_suffix("awg"))?;
+    let gauge: f64 = rest.trim().trim_start_matches('#').parse().ok()?;
+    (0.0..=40.0).contains(&gauge).then(|| strikeline_core::wiring::awg_area_mm2(gauge))
+}
+
+/// A value with what it may be off by.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Toleranced {
+    /// The value itself, in the base unit.
+    pub typical: f64,
+    /// The least.
+    pub min: f64,
+    /// The most.
+    pub max: f64,
+}
+
+/// A value with its tolerance: `150 ± 30 mV`, `120…180 mV`, `10 ms ± 20 %`, or a value alone.
+///
+/// - `usual`: the fraction either way where the text gives none.
+///
+/// # Errors
+/// As [`parse`], for either part.
+pub fn parse_toleranced(text: &str, shown: &Shown, usual: f64) -> Result<Toleranced, QuantityError> {
+    let text = text.replace("+/-", "±").replace("+-", "±").replace("...", "…");
+    if let Some((value, tolerance)) = text.split_once('±') {
+        let (value, tolerance) = (value.trim(), tolerance.trim());
+        if let Some(percent) = tolerance.strip_suffix('%') {
+            let typical = parse(value, shown)?;
+            let ratio = Shown { unit: Unit::Ratio, text: "%", worth: 0.01 };
+            let part = parse(percent, &ratio)?.abs();
+            return Ok(either_way(typical, typical.abs() * part));
+        }
+        // A unit behind the tolerance counts for both.
+        let unit = plain(tolerance)?;
+        let unit = split(&unit).map_or("", |(_, unit)| unit);
+        let bare = split(&plain(value)?).is_some_and(|(_, unit)| unit.is_empty());
+        let typical = if bare { parse(&format!("{value} {unit}"), shown)? } else { parse(value, shown)? };
+        return Ok(either_way(typical, parse(tolerance, shown)?.abs()));
+    }
+    if let Some((low, high)) = text.split_once('…') {
+        let unit = plain(high)?;
+        let unit = split(&unit).map_or("", |(_, unit)| unit);
+        let bare = split(&plain(low)?).is_some_and(|(_, unit)| unit.is_empty());
+        let a = if bare { parse(&format!("{low} {unit}"), shown)? } else { parse(low, shown)? };
+        let b = parse(high, shown)?;
+        return Ok(Toleranced { typical: 0.5 * (a + b), min: a.min(b), max: a.max(b) });
+    }
+    let typical = parse(&text, shown)?;
+    Ok(either_way(typical, typical.abs() * usual))
+}
+
+fn either_way(typical: f64, by: f64) -> Toleranced {
+    Toleranced { typical, min: typical - by, max: typical + by }
+}
+
+/// The shortest text in the field's own unit that reads back as the same number.
+pub fn format(value: f64, shown: &Shown) -> String {
+    for digits in 0..17 {
+        let number = format!("{:.*e}", digits, value / shown.worth);
+        if let Ok(n) = number.parse::<f64>()
+            && n * shown.worth == value
+        {
+            let unit = if shown.text.is_empty() { String::new() } else { format!(" {}", shown.text) };
+            return format!("{n}{unit}");
+        }
+    }
+    format!("{}{}{}", value, if base(shown.unit).is_empty() { "" } else { " " }, base(shown.unit))
+}
+
+fn base(unit: Unit) -> &'static str {
+    spellings(unit)[0].0
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const MILLIOHM: Shown = Shown { unit: Unit::Ohm, text: "mΩ", worth: 1e-3 };
+    const VOLT: Shown = Shown { unit: Unit::Volt, text: "V", worth: 1.0 };
+    const MILLIVOLT: Shown = Shown { unit: Unit::Volt, text: "mV", worth: 1e-3 };
+    const CAPACITY: Shown = Shown { unit: Unit::AmpereHour, text: "Ah", worth: 1.0 };
+    const SECTION: Shown = Shown { unit: Unit::Section, text: "mm²", worth: 1.0 };
+
+    #[test]
+    fn exact_what_people_type() {
+        for (text, shown, want) in [
+            ("2.8Ah", CAPACITY, 2.8),
+            ("2800 mAh", CAPACITY, 2.8),
+            ("45 mΩ", MILLIOHM, 0.045),
+            ("45", MILLIOHM, 0.045),
+            ("45mOhm", MILLIOHM, 0.045),
+            ("150m", MILLIVOLT, 0.15),
+            ("150m", VOLT, 0.15),
+            ("3,3 V", VOLT, 3.3),
+            ("3.3\u{a0}V", VOLT, 3.3),
+            ("1e-3", VOLT, 1e-3),
+            ("0,75mm2", SECTION, 0.75),
+        ] {
+            let got = parse(text, &shown).expect(text);
+            assert!((got - want).abs() <= 1e-12 * want, "{text}: {got}");
+        }
+        // ASTM B258: AWG 18 has 0.823 mm².
+        for text in ["AWG 18", "18 AWG", "awg18", "AWG#18"] {
+            assert!((parse(text, &SECTION).expect(text) - 0.823).abs() < 5e-4, "{text}");
+        }
+    }
+
+    #[test]
+    fn exact_refusals_say_what_would_be_accepted() {
+        let said = |text: &str, shown: &Shown| parse(text, shown).expect_err(text).to_string();
+        assert_eq!(
+            said("0.75 m", &SECTION),
+            "0.75 m is a length; accepted is a section in mm² or AWG, e.g. 0.75 mm² or AWG 18"
+        );
+        assert_eq!(said("3.3 A", &VOLT), "3.3 A is a current; accepted is a voltage in V");
+        assert!(said("1,234.5", &VOLT).contains("both comma and point"));
+        assert!(said("much", &VOLT).contains("does not begin with a number"));
+        assert!(said("", &VOLT).contains("nothing is entered"));
+        assert!(said("1e999", &VOLT).contains("too large"));
+    }
+
+    #[test]
+    fn exact_tolerances() {
+        for text in ["150 ± 30 mV", "150 mV ± 30 mV", "150 +/- 30", "150 mV ± 20 %", "120…180 mV", "150"]
+        {
+            let t = parse_toleranced(text, &MILLIVOLT, 0.2).expect(text);
+            let near = |a: f64, b: f64| (a - b).abs() < 1e-12;
+            assert!(near(t.typical, 0.15) && near(t.min, 0.12) && near(t.max, 0.18), "{text}: {t:?}");
+        }
+    }
+
+    #[test]
+    fn law_a_formatted_number_reads_back_the_same() {
+        let mut x: f64 = 0.123_456_789_012_345_68;
+        for _ in 0..2000 {
+            x = (x * 997.3).fract();
+            for shown in [MILLIOHM, VOLT, CAPACITY] {
+                let text = format(x, &shown);
+                assert_eq!(parse(&text, &shown), Ok(x), "{text}");
+            }
+        }
+        assert_eq!(format(0.045, &MILLIOHM), "45 mΩ");
+    }
+}

@@ -1,0 +1,255 @@
+//! The report as JSON: the same text natively and in the page, to the last digit.
+//!
+//! Keys carry their unit. Numbers are written in the shortest form that reads back as the same number.
+
+use serde_json::{Value, json};
+use strikeline_core::charge;
+use strikeline_core::press::{self, PressOptions, PressStart};
+use strikeline_core::report::{
+    ChargeEnd, ChargeReport, Event, EventKind, Ledger, Limit, Mode, NotFull, PressEnd, PressReport,
+    PressSummary, Protector,
+};
+use strikeline_core::setup::Setup;
+use strikeline_core::verdict::{self, Reason, Verdict, Word};
+
+use crate::check::Checked;
+
+/// Everything that is computed for a design.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Answers {
+    /// One charge with nominal parts.
+    pub charge: ChargeReport,
+    /// One charge with weak parts.
+    pub weak: ChargeReport,
+    /// The first press of the nominal charge.
+    pub press: PressReport,
+    /// The verdict from both charges.
+    pub verdict: Verdict,
+}
+
+/// Computes everything for a checked design.
+pub fn answer(checked: &Checked) -> Answers {
+    let charge = charge::run(&checked.nominal);
+    let weak = charge::run(&checked.weak);
+    let usage = &checked.nominal.usage;
+    let start = PressStart::relaxed(&checked.nominal, 1.0, usage.ambient);
+    let options = PressOptions { samples: press::sample_times(usage.press), ..PressOptions::default() };
+    let press = press::run(&checked.nominal, &start, &options);
+    let verdict = verdict::judge(&charge, &weak);
+    Answers { charge, weak, press, verdict }
+}
+
+/// What a report holds beside verdict and summaries.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub struct Extras {
+    /// The events of the first press.
+    pub events: bool,
+    /// The trace of the first press.
+    pub trace: bool,
+    /// A line for every press of the charge.
+    pub presses: bool,
+}
+
+/// The report of a design.
+pub fn json(name: &str, checked: &Checked, answers: &Answers, extras: Extras) -> Value {
+    let setup = &checked.nominal;
+    let mut press = summary_json(setup, &answers.press.summary);
+    if extras.events {
+        press["events"] = answers.press.events.iter().map(|e| event_json(setup, e)).collect();
+    }
+    if extras.trace {
+        press["trace"] = trace_json(&answers.press);
+    }
+    let mut charge = charge_json(setup, &answers.charge);
+    if extras.presses {
+        charge["presses_list"] = answers
+            .charge
+            .presses
+            .iter()
+            .map(|p| {
+                let mut line = summary_json(setup, &p.summary);
+                line["number"] = json!(p.number);
+                line["rested_V"] = json!(p.rested.0);
+                line
+            })
+            .collect();
+    }
+    json!({
+        "report": 1,
+        "name": name,
+        "verdict": verdict_json(setup, &answers.verdict),
+        "press": press,
+        "charge": charge,
+        "charge_weak_parts": charge_json(&checked.weak, &answers.weak),
+    })
+}
+
+fn verdict_json(setup: &Setup, verdict: &Verdict) -> Value {
+    let word = match verdict.word {
+        Word::Holds => "holds",
+        Word::Borderline => "borderline",
+        Word::Fails => "fails",
+    };
+    let parts = match verdict.parts {
+        verdict::Parts::Nominal => "nominal",
+        verdict::Parts::Weak => "weak",
+    };
+    let reason = match verdict.reason {
+        Reason::RunsDown(end) => format!("runs_down:{}", end_name(setup, end)),
+        Reason::NoFullPress(why) => format!("no_full_press:{}", not_full_name(setup, why)),
+        Reason::StopsEarly(end) => format!("stops_early:{}", end_name(setup, end)),
+    };
+    json!({ "word": word, "decided_with_parts": parts, "reason": reason })
+}
+
+/// The name of a limit: a stage's own, or `over_discharge`; `second:` in front for the second protector.
+pub fn limit_name(setup: &Setup, limit: Limit) -> String {
+    let (Limit::Stage(protector, _) | Limit::OverDischarge(protector)) = limit;
+    let (front, board) = match protector {
+        Protector::Board => ("", setup.board.as_ref()),
+        Protector::Second => ("second:", setup.second_protector.as_ref()),
+    };
+    let name = match limit {
+        Limit::Stage(_, k) => board.and_then(|b| b.stages.get(k)).map_or("stage", |s| s.name.as_str()),
+        Limit::OverDischarge(_) => "over_discharge",
+    };
+    format!("{front}{name}")
+}
+
+/// The name of a reason for a press that is not full.
+pub fn not_full_name(setup: &Setup, why: NotFull) -> String {
+    match why {
+        NotFull::Opened(limit) => format!("opened:{}", limit_name(setup, limit)),
+        NotFull::CellEmpty => "cell_empty".into(),
+        NotFull::EventLimit => "event_limit".into(),
+        NotFull::SagBelowHold => "dropped:sag_below_hold".into(),
+        NotFull::NoOperatingPoint => "dropped:no_operating_point".into(),
+        NotFull::NotStarted => "not_started".into(),
+        NotFull::StrikeVoltageNotReached => "strike_voltage_not_reached".into(),
+        NotFull::StrikeTimeNotCompleted => "strike_time_not_completed".into(),
+    }
+}
+
+/// The name of what ended a charge.
+pub fn end_name(setup: &Setup, end: ChargeEnd) -> String {
+    match end {
+        ChargeEnd::NoLitTime(why) => format!("no_lit_time:{}", not_full_name(setup, why)),
+        ChargeEnd::Opened(limit) => format!("opened:{}", limit_name(setup, limit)),
+        ChargeEnd::OpenedInRest(limit) => format!("opened_in_rest:{}", limit_name(setup, limit)),
+        ChargeEnd::CellEmpty => "cell_empty".into(),
+        ChargeEnd::EmptyInRest => "in_rest:cell_empty".into(),
+        ChargeEnd::PressLimit => "press_limit".into(),
+        ChargeEnd::WorkLimit => "work_limit".into(),
+    }
+}
+
+/// The name of a state of the load.
+pub fn mode_name(mode: Mode) -> &'static str {
+    match mode {
+        Mode::Stalled => "stalled",
+        Mode::Pinned => "pinned",
+        Mode::Unlit => "unlit",
+        Mode::Lit => "lit",
+    }
+}
+
+/// An event.
+pub fn event_json(setup: &Setup, e: &Event) -> Value {
+    let (kind, detail) = match e.kind {
+        EventKind::Closed => ("closed", None),
+        EventKind::Over(limit) => ("over", Some(limit)),
+        EventKind::Under(limit) => ("under", Some(limit)),
+        EventKind::StartReached => ("start_reached", None),
+        EventKind::Runs => ("runs", None),
+        EventKind::PinnedAtStart => ("pinned_at_start", None),
+        EventKind::Stalls => ("stalls", None),
+        EventKind::StrikeReached => ("strike_reached", None),
+        EventKind::StrikeLost => ("strike_lost", None),
+        EventKind::Lit => ("lit", None),
+        EventKind::Drop => ("drop", None),
+        EventKind::Opened(limit) => ("opened", Some(limit)),
+        EventKind::CellEmpty => ("cell_empty", None),
+        EventKind::Released => ("released", None),
+        EventKind::EventLimit => ("event_limit", None),
+    };
+    json!({
+        "t_s": e.time.0, "kind": kind, "detail": detail.map(|l| limit_name(setup, l)), "mode": mode_name(e.mode),
+        "V_load_V": e.load.0, "I_A": e.current.0, "V_board_V": e.board.0, "V_cell_V": e.cell.0, "soc": e.soc,
+    })
+}
+
+/// The energy ledger.
+pub fn ledger_json(l: &Ledger) -> Value {
+    json!({
+        "source": l.source.0, "cell_ohmic": l.cell_ohmic.0, "cell_polarisation": l.cell_polarisation.0,
+        "second_protector": l.second_protector.0, "ahead": l.ahead.0, "pair": l.pair.0, "shunt": l.shunt.0,
+        "after": l.after.0, "esr": l.esr.0, "c_in_left": l.capacitor_left.0, "load_lit": l.load_lit.0,
+        "load_unlit": l.load_unlit.0, "load_stalled": l.load_stalled.0, "standby": l.standby.0,
+    })
+}
+
+/// A press in numbers.
+pub fn summary_json(setup: &Setup, s: &PressSummary) -> Value {
+    let (ended, opened_by) = match s.end {
+        PressEnd::Released => ("released", None),
+        PressEnd::Opened(limit) => ("opened", Some(limit)),
+        PressEnd::CellEmpty => ("cell_empty", None),
+        PressEnd::EventLimit => ("event_limit", None),
+    };
+    let v_end: Vec<f64> = s.branches_end.iter().take(setup.cell.branches.len()).map(|v| v.0).collect();
+    json!({
+        "full": s.not_full.is_none(), "why_not_full": s.not_full.map(|w| not_full_name(setup, w)),
+        "ended": ended, "opened_by": opened_by.map(|l| limit_name(setup, l)), "t_end_s": s.end_time.0,
+        "lit_s": s.lit.0, "first_lit_s": s.first_lit.map(|t| t.0), "drops": s.drops, "started": s.start.is_some(),
+        "start_s": s.start.map(|t| t.0), "end_mode": mode_name(s.end_mode), "V_load_end_V": s.load_end.0,
+        "I_end_A": s.current_end.0, "V_board_end_V": s.board_end.0, "V_cell_end_V": s.cell_end.0,
+        "R_pair_end_ohm": s.pair_end.0, "peak_I_A": s.peak_current.0, "lowest_lit_V": s.lowest_lit.map(|v| v.0),
+        "soc_start": s.soc_start, "soc_end": s.soc_end, "v_end_V": v_end,
+        "T_cell_end_C": s.cell_temperature_end.0, "T_switch_end_C": s.switch_temperature_end.0,
+        "T_switch2_end_C": s.second_temperature_end.0, "T_cell_max_C": s.cell_temperature_max.0,
+        "T_switch_max_C": s.switch_temperature_max.0, "T_switch2_max_C": s.second_temperature_max.0,
+        "energy_J": ledger_json(&s.ledger), "ledger_residual_rel": s.ledger.residual(), "charge_As": s.charge_as,
+        "i2t_A2s": s.i2t_a2s, "steps": s.steps,
+    })
+}
+
+/// The trace of a press, column by column.
+pub fn trace_json(report: &PressReport) -> Value {
+    let trace = &report.trace;
+    let column =
+        |f: &dyn Fn(&strikeline_core::report::Sample) -> Value| trace.iter().map(f).collect::<Vec<_>>();
+    json!({
+        "t_s": column(&|s| json!(s.time.0)), "mode": column(&|s| json!(mode_name(s.mode))),
+        "V_load_V": column(&|s| json!(s.load.0)), "V_board_V": column(&|s| json!(s.board.0)),
+        "V_cell_V": column(&|s| json!(s.cell.0)), "I_A": column(&|s| json!(s.current.0)),
+        "I_load_A": column(&|s| json!(s.load_current.0)), "v_C_V": column(&|s| json!(s.capacitor.0)),
+        "soc": column(&|s| json!(s.soc)),
+        "v_V": column(&|s| json!(s.branches.iter().map(|v| v.0).collect::<Vec<_>>())),
+        "T_cell_C": column(&|s| json!(s.cell_temperature.0)),
+        "T_switch_C": column(&|s| json!(s.switch_temperature.0)),
+        "R_pair_ohm": column(&|s| json!(s.pair.0)), "sense": column(&|s| json!(s.sense)),
+    })
+}
+
+/// A charge in numbers.
+pub fn charge_json(setup: &Setup, report: &ChargeReport) -> Value {
+    let v = |x: Option<strikeline_core::units::Volts>| x.map(|v| v.0);
+    json!({
+        "presses": report.presses.len(), "full_presses": report.full_presses, "lit_s": report.lit.0,
+        "energy_delivered_J": report.ledger.load_lit.0, "energy_J": ledger_json(&report.ledger),
+        "ledger_residual_rel": report.ledger.residual(), "recharge_mark_V": v(report.recharge_mark),
+        "mark_relaxed_before_V": v(report.mark_relaxed_before),
+        "mark_in_use_before_V": v(report.mark_in_use_before), "mark_in_use_after_V": v(report.mark_in_use_after),
+        "soc_left": report.soc_left, "charge_left_Ah": report.charge_left.0,
+        "first_imperfect": report.first_imperfect.map(|k| {
+            let p = &report.presses[k];
+            json!({
+                "n": p.number, "why": p.summary.not_full.map(|w| not_full_name(setup, w)),
+                "t_end_s": p.summary.end_time.0,
+            })
+        }),
+        "ended": end_name(setup, report.end), "clock_s": report.clock.0, "T_cell_max_C": report.cell_temperature_max.0,
+        "T_switch_max_C": report.switch_temperature_max.0, "T_switch2_max_C": report.second_temperature_max.0,
+        "steps": report.steps,
+    })
+}
