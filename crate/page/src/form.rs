@@ -1,0 +1,136 @@
+//! The form as markup, made from the catalogue.
+
+use strikeline_design::catalogue::{FIELDS, Field, Kind, PARTS, Part};
+use strikeline_design::design::Design;
+use strikeline_design::quantity;
+
+use crate::number::escaped;
+
+/// The id of a field's input.
+pub fn input_id(key: &str) -> String {
+    format!("f-{}", key.replace('.', "-"))
+}
+
+/// The whole form.
+pub fn form(design: &Design) -> String {
+    PARTS.iter().map(|(part, name)| part_markup(design, *part, name)).collect()
+}
+
+fn part_markup(design: &Design, part: Part, name: &str) -> String {
+    let rows = |everyday: bool| -> String {
+        FIELDS.iter().filter(|f| f.part == part && f.everyday == everyday).map(|f| row(design, f)).collect()
+    };
+    let (plain, folded) = (rows(true), rows(false));
+    let heading = format!("<h2>{name}</h2>");
+    let more = match part {
+        Part::Cell => "Age, parallel cells, curves, heat",
+        Part::Board => "More limits, over-discharge, switch",
+        Part::Second => "Fitted, and with what",
+        Part::Leads => "Conductor and joints",
+        Part::Load => "Start, surge, capacitor, ripple",
+        Part::Use => "Bounds",
+    };
+    let folded = if folded.is_empty() {
+        folded
+    } else {
+        format!("<details><summary>{more}</summary>{folded}</details>")
+    };
+    format!("<section class=\"part\">{heading}{plain}{folded}</section>")
+}
+
+/// What a field accepts, in words.
+pub fn accepted(field: &Field) -> String {
+    match field.kind {
+        Kind::Quantity { shown, min, max, optional, tolerance } => {
+            let range = format!("{} to {}", quantity::format(min, &shown), quantity::format(max, &shown));
+            let tolerance = match tolerance {
+                Some(t) => format!(
+                    "; a tolerance may follow, e.g. ± 10 %, else ± {} % is taken",
+                    (t * 100.0).round()
+                ),
+                None => String::new(),
+            };
+            format!("{range}{tolerance}{}", if optional { "; may stay empty" } else { "" })
+        }
+        Kind::Choice(_) => String::new(),
+        Kind::Table { optional, .. } => {
+            format!(
+                "two numbers a line, the first rising{}",
+                if optional { "; paste two columns" } else { "" }
+            )
+        }
+    }
+}
+
+fn row(design: &Design, field: &Field) -> String {
+    let id = input_id(field.key);
+    let text = escaped(design.get(field.key));
+    let hidden = if design.matters(field) { "" } else { " hidden" };
+    let attributes =
+        format!("id=\"{id}\" data-key=\"{}\" aria-describedby=\"{id}-help {id}-fault\"", field.key);
+    let (input, wide) = match field.kind {
+        Kind::Choice(list) => {
+            let options: String = list
+                .iter()
+                .map(|(key, label)| {
+                    let selected = if *key == design.get(field.key) { " selected" } else { "" };
+                    format!("<option value=\"{key}\"{selected}>{label}</option>")
+                })
+                .collect();
+            (format!("<select {attributes}>{options}</select>"), " wide")
+        }
+        Kind::Table { .. } => {
+            let rows = design.get(field.key).lines().count().clamp(2, 8);
+            (
+                format!("<textarea {attributes} rows=\"{rows}\" spellcheck=\"false\">{text}</textarea>"),
+                " wide",
+            )
+        }
+        Kind::Quantity { optional, .. } => {
+            let place = if optional { " placeholder=\"not given\"" } else { "" };
+            (
+                format!(
+                    "<input {attributes} value=\"{text}\"{place} autocomplete=\"off\" spellcheck=\"false\">"
+                ),
+                "",
+            )
+        }
+    };
+    let accepted = accepted(field);
+    let help = if accepted.is_empty() {
+        escaped(field.help)
+    } else {
+        format!("{} Accepted: {}.", escaped(field.help), escaped(&accepted))
+    };
+    format!(
+        "<div class=\"field{wide}\" data-row=\"{}\"{hidden}><label for=\"{id}\">{}</label>{input}\
+         <p class=\"help\" id=\"{id}-help\">{help}</p><p class=\"fault\" id=\"{id}-fault\" hidden></p></div>",
+        field.key,
+        escaped(field.label),
+    )
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn law_every_field_has_a_labelled_input() {
+        let markup = form(&Design::demo());
+        for f in FIELDS {
+            let id = input_id(f.key);
+            assert!(
+                markup.contains(&format!("for=\"{id}\"")) && markup.contains(&format!("id=\"{id}\"")),
+                "{}",
+                f.key
+            );
+        }
+    }
+
+    #[test]
+    fn exact_typed_markup_stays_text() {
+        let mut design = Design::demo();
+        design.set("cell.capacity", "\"><script>alert(1)</script>");
+        assert!(!form(&design).contains("<script>"));
+    }
+}

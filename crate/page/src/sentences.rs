@@ -1,0 +1,219 @@
+//! What the page says of the numbers, sentence by sentence.
+
+use strikeline_core::report::{ChargeEnd, Event, EventKind, Limit, NotFull, Protector};
+use strikeline_core::setup::{Arrangement, Setup};
+use strikeline_core::verdict::{Parts, Reason, Word};
+use strikeline_design::report::Answers;
+
+use crate::number::{amps, percent, time, volts};
+
+/// A verdict in words.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Said {
+    /// The word.
+    pub word: &'static str,
+    /// `holds`, `near` or `fails`, for the style.
+    pub tone: &'static str,
+    /// The sentence.
+    pub sentence: String,
+    /// What decides it.
+    pub decided: String,
+}
+
+/// A limit in words.
+pub fn limit(setup: &Setup, limit: Limit) -> String {
+    let (Limit::Stage(protector, _) | Limit::OverDischarge(protector)) = limit;
+    let (whose, board) = match protector {
+        Protector::Board => ("the board's", setup.board.as_ref()),
+        Protector::Second => ("the cell's own protector's", setup.second_protector.as_ref()),
+    };
+    let what = match limit {
+        Limit::OverDischarge(_) => "over-discharge limit",
+        Limit::Stage(_, k) => match board.and_then(|b| b.stages.get(k)).map(|s| s.name.as_str()) {
+            Some("short") => "short-circuit limit",
+            Some("over_current_2") => "second over-current level",
+            Some("over_current_amps") => "limit in amps",
+            _ => "over-current limit",
+        },
+    };
+    format!("{whose} {what}")
+}
+
+/// Why a press is not full, as the end of "… because".
+pub fn not_full(setup: &Setup, why: NotFull) -> String {
+    match why {
+        NotFull::Opened(l) => format!("{} opens", limit(setup, l)),
+        NotFull::CellEmpty => "the cell is empty".into(),
+        NotFull::EventLimit => "it flickers more often than is followed here".into(),
+        NotFull::SagBelowHold => "the voltage sags below the hold voltage and the arc drops".into(),
+        NotFull::NoOperatingPoint => {
+            "the path cannot give the lit draw at any voltage and the arc drops".into()
+        }
+        NotFull::NotStarted => "the load never starts".into(),
+        NotFull::StrikeVoltageNotReached => "the strike voltage is not reached".into(),
+        NotFull::StrikeTimeNotCompleted => "the strike voltage does not stand long enough".into(),
+    }
+}
+
+/// What ends a charge, as a clause.
+pub fn ended(setup: &Setup, end: ChargeEnd) -> String {
+    match end {
+        ChargeEnd::NoLitTime(why) => not_full(setup, why),
+        ChargeEnd::Opened(l) => format!("{} opens during a press", limit(setup, l)),
+        ChargeEnd::OpenedInRest(l) => format!("{} opens in a rest", limit(setup, l)),
+        ChargeEnd::CellEmpty => "the cell is empty".into(),
+        ChargeEnd::EmptyInRest => "the cell runs empty in a rest".into(),
+        ChargeEnd::PressLimit => "the set number of presses is reached".into(),
+        ChargeEnd::WorkLimit => "it flickers more often than is followed here".into(),
+    }
+}
+
+/// The verdict.
+pub fn verdict(nominal: &Setup, answers: &Answers) -> Said {
+    let (word, tone) = match answers.verdict.word {
+        Word::Holds => ("Holds", "holds"),
+        Word::Borderline => ("Borderline", "near"),
+        Word::Fails => ("Fails", "fails"),
+    };
+    let charge = &answers.charge;
+    let until = format!(
+        "{} presses strike and hold, down to {} charge",
+        charge.full_presses,
+        percent(left_after_full(answers))
+    );
+    let sentence = match (answers.verdict.word, answers.verdict.reason) {
+        (Word::Holds, _) => format!("{until}; weak parts do too."),
+        (Word::Borderline, Reason::NoFullPress(why)) => {
+            format!(
+                "{until} with parts as entered; with weak ones not a single press: {}.",
+                not_full(nominal, why)
+            )
+        }
+        (Word::Borderline, _) => {
+            format!(
+                "{until} with parts as entered; weak ones stop after {}.",
+                presses(answers.weak.full_presses)
+            )
+        }
+        (Word::Fails, Reason::NoFullPress(why)) => format!("Not one full press: {}.", not_full(nominal, why)),
+        (Word::Fails, _) => {
+            format!(
+                "It stops after {} with {} of the charge unused.",
+                presses(charge.full_presses),
+                percent(charge.soc_left)
+            )
+        }
+    };
+    let parts = match answers.verdict.parts {
+        Parts::Nominal => "parts as entered",
+        Parts::Weak => "every tolerance at its unfavourable end at once",
+    };
+    let reason = match answers.verdict.reason {
+        Reason::RunsDown(end) => format!("the charge runs down until {}", ended(nominal, end)),
+        Reason::NoFullPress(why) => not_full(nominal, why),
+        Reason::StopsEarly(end) => ended(nominal, end),
+    };
+    Said { word, tone, sentence, decided: format!("Decided by: {reason} ({parts}).") }
+}
+
+fn presses(n: u32) -> String {
+    if n == 1 { "1 full press".into() } else { format!("{n} full presses") }
+}
+
+/// Charge left after the last full press, 0 to 1.
+pub fn left_after_full(answers: &Answers) -> f64 {
+    answers
+        .charge
+        .presses
+        .iter()
+        .rev()
+        .find(|p| p.summary.not_full.is_none())
+        .map_or(1.0, |p| p.summary.soc_end)
+}
+
+/// What the arrangement gives up; `None` for the board used as it is meant.
+pub fn arrangement_warning(setup: &Setup) -> Option<&'static str> {
+    match setup.arrangement {
+        Arrangement::ThroughBoard => None,
+        Arrangement::LoadAtCell => Some(
+            "The load is taken at the cell: nothing on the board opens on a short, on too much current or on an empty \
+             cell. A short then heats leads and cell until something burns. Wire the load through a board that can carry it.",
+        ),
+        Arrangement::SwitchBridged => Some(
+            "The board's switch is bridged: nothing opens on a short, on too much current, on an empty cell or on an \
+             over-charged one. Take the bridge away and use a board that can carry the load.",
+        ),
+        Arrangement::NoBoard => Some(
+            "There is no board: nothing opens on a short, on too much current, on an empty cell or on an over-charged \
+             one. Fit a board that can carry the load.",
+        ),
+    }
+}
+
+/// An event as a sentence.
+pub fn event(setup: &Setup, e: &Event) -> String {
+    let what = match e.kind {
+        EventKind::Closed => format!("Switch closed; {} rush into the input capacitor.", amps(e.current.0)),
+        EventKind::Over(l) => format!("Past {}: its delay runs.", limit(setup, l)),
+        EventKind::Under(l) => format!("Back under {}.", limit(setup, l)),
+        EventKind::StartReached => format!("Start voltage reached, {}.", volts(e.load.0)),
+        EventKind::Runs => "The load runs.".into(),
+        EventKind::PinnedAtStart => {
+            "Held at the start voltage: the surge takes all that the path gives.".into()
+        }
+        EventKind::Stalls => "The load stalls.".into(),
+        EventKind::StrikeReached => format!("Strike voltage reached, {}.", volts(e.load.0)),
+        EventKind::StrikeLost => "Strike voltage lost again.".into(),
+        EventKind::Lit => "The arc lights.".into(),
+        EventKind::Drop => format!("The arc drops at {}.", volts(e.load.0)),
+        EventKind::Opened(l) => format!("{} opens at {}.", capital(&limit(setup, l)), amps(e.current.0)),
+        EventKind::CellEmpty => "The cell is empty.".into(),
+        EventKind::Released => {
+            format!("Button released; {} at the load, {}.", volts(e.load.0), amps(e.current.0))
+        }
+        EventKind::EventLimit => "Too many events; not followed further.".into(),
+    };
+    format!("{}: {what}", time(e.time.0))
+}
+
+/// With a capital first letter.
+pub fn capital(text: &str) -> String {
+    let mut chars = text.chars();
+    chars.next().map_or_else(String::new, |c| c.to_uppercase().collect::<String>() + chars.as_str())
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use strikeline_design::check::check;
+    use strikeline_design::design::Design;
+    use strikeline_design::report::answer;
+
+    #[test]
+    fn exact_the_demo_is_borderline_and_says_why() {
+        let checked = check(&Design::demo()).expect("the demo is sound");
+        let said = verdict(&checked.nominal, &answer(&checked));
+        assert_eq!(said.word, "Borderline");
+        assert!(
+            said.sentence.contains("weak ones not a single press: the board's over-current limit opens."),
+            "{}",
+            said.sentence
+        );
+        assert!(
+            said.decided.starts_with("Decided by: the board's over-current limit opens"),
+            "{}",
+            said.decided
+        );
+    }
+
+    #[test]
+    fn exact_a_bypass_is_told_off() {
+        let mut design = Design::demo();
+        for way in ["load_at_cell", "switch_bridged", "no_board"] {
+            design.set("board.arrangement", way);
+            let checked = check(&design).expect("sound");
+            let warning = arrangement_warning(&checked.nominal).expect("a warning");
+            assert!(warning.contains("nothing") && warning.contains("a board that can carry"), "{way}");
+        }
+    }
+}
