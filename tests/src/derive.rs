@@ -167,8 +167,9 @@ fn least_squares(rise: &[(f64, f64)], steady: f64, kept: [bool; 3]) -> [f64; 3] 
     for j in 0..3 {
         for k in j + 1..3 {
             let f = m[k][j] / m[j][j];
-            for c in j..4 {
-                m[k][c] -= f * m[j][c];
+            let pivot = m[j];
+            for (value, above) in m[k].iter_mut().zip(pivot).skip(j) {
+                *value -= f * above;
             }
         }
     }

@@ -27,7 +27,8 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
         .map(|text| format!("<p class=\"warning\"><b>▲ Stop.</b> {}</p>", escaped(text)))
         .unwrap_or_default();
     let inner = (width - 34.0).max(240.0);
-    let pair = if width > 980.0 { (width - 34.0 * 2.0 - 20.0) / 2.0 } else { inner };
+    // As the style has it: two figures side by side from twice 430 px and a gap.
+    let pair = if width >= 880.0 { (width - 20.0) / 2.0 - 34.0 } else { inner };
     let charts = vec![
         press_volts(setup, answers),
         press_amps(setup, answers),
@@ -82,15 +83,15 @@ fn facts(setup: &Setup, answers: &Answers) -> String {
         Some(v) => format!("rested for hours; {} read between presses", volts(v.0)),
         None => "there is no full press to recharge after".into(),
     };
-    let lowest = answers.press.summary.lowest_lit;
-    let over_hold = last_full(answers).map(|s| s.load_end.0 - setup.load.hold.0);
-    let hold = over_hold.map_or("—".into(), |v| format!("{} mV", fixed(v * 1e3, 0)));
-    let hold_note = match lowest {
-        Some(v) => format!(
-            "over the hold voltage at the end of the last full press; {} mV in the first",
-            fixed((v.0 - setup.load.hold.0) * 1e3, 0)
-        ),
-        None => "the first press has no lit time".into(),
+    let (hold, hold_note) = match at_half(answers) {
+        Some(v) => {
+            let spare = (v - setup.load.hold.0) * 1e3;
+            (
+                format!("{} mV", fixed(spare, 0)),
+                "over the hold voltage at the end of a press at half charge".to_string(),
+            )
+        }
+        None => ("—".into(), "no press at half charge is lit to its end".into()),
     };
     let (trip, trip_note) = match trip_margin(setup, answers) {
         Some((ratio, i, limit)) => (
@@ -116,8 +117,12 @@ fn facts(setup: &Setup, answers: &Answers) -> String {
     )
 }
 
-fn last_full(answers: &Answers) -> Option<&strikeline_core::report::PressSummary> {
-    answers.charge.presses.iter().rev().map(|p| &p.summary).find(|s| s.not_full.is_none())
+/// Voltage at the load at the end of the press nearest to half charge, if that is lit.
+fn at_half(answers: &Answers) -> Option<f64> {
+    let from_half = |p: &&strikeline_core::report::PressLine| (p.summary.soc_end - 0.5).abs();
+    let press = answers.charge.presses.iter().min_by(|a, b| from_half(a).total_cmp(&from_half(b)))?;
+    let near = from_half(&press) < 0.1 && press.summary.end_mode == Mode::Lit;
+    near.then_some(press.summary.load_end.0)
 }
 
 /// The current above which the board's first stage trips when its pair has the resistance `pair`.

@@ -111,18 +111,13 @@ pub(crate) fn step<P: Rates<N, Q>, const N: usize, const Q: usize>(
 impl<P, const N: usize, const Q: usize> Step<P, N, Q> {
     /// The state at the fraction `x` of the step, 0 to 1.
     pub(crate) fn at(&self, x: f64) -> [f64; N] {
-        let mut out = [0.0; N];
-        for n in 0..N {
+        let w = 1.0 - x;
+        core::array::from_fn(|n| {
             let rise = self.to[n] - self.from[n];
             let first = self.h * self.rates[0][n] - rise;
             let last = rise - self.h * self.rates[6][n] - first;
-            let mut bend = 0.0;
-            for k in 0..7 {
-                bend += D[k] * self.rates[k][n];
-            }
-            let w = 1.0 - x;
-            out[n] = self.from[n] + x * (rise + w * (first + x * (last + w * self.h * bend)));
-        }
-        out
+            let bend: f64 = self.rates.iter().zip(D).map(|(rates, d)| d * rates[n]).sum();
+            self.from[n] + x * (rise + w * (first + x * (last + w * self.h * bend)))
+        })
     }
 }

@@ -139,7 +139,7 @@ impl Simulator<'_> {
                 (high, there) = (turn, extreme);
             }
         }
-        if !(there.0 > 0.0) {
+        if there.0 <= 0.0 || there.0.is_nan() {
             return None;
         }
         let mut low = 0.0;

@@ -197,7 +197,7 @@ impl Simulator<'_> {
         let stiffness = point.at.path.conductance + point.at.draw_slope;
         // A decaying surge seen through a first-order lag: s·e^(−t/τ)/(1 − τ_fast/τ).
         let surge_drift = if surge > 0.0 {
-            let lag = self.fast_time(&point) / self.setup.load.surge_time.0;
+            let lag = self.fast_time(point) / self.setup.load.surge_time.0;
             surge / self.setup.load.surge_time.0 / (1.0 - lag).max(0.5)
         } else {
             0.0
@@ -227,7 +227,7 @@ impl Simulator<'_> {
             }
             return false;
         }
-        let fast = self.fast_time(&point);
+        let fast = self.fast_time(point);
         // The operating point must move slowly against the capacitor's time constant: what is
         // neglected is τ² times its second derivative, about the drift over the shortest slow time.
         let mut slow_rate = self.circuit.branch_rate.iter().copied().fold(0.0, f64::max);
@@ -262,7 +262,7 @@ impl Simulator<'_> {
         if self.slaved {
             return self.hints[usize::from(self.mode == Mode::Lit)];
         }
-        let fast = self.fast_time(&point);
+        let fast = self.fast_time(point);
         let fast = if fast > 0.0 { fast } else { self.setup.load.capacitance.0 / point.at.path.conductance };
         (0.4 * fast).max(1e-12)
     }

@@ -1,0 +1,145 @@
+//! Every check, in the order in which a fault is cheapest to find.
+
+use std::io::Write;
+use std::path::Path;
+use std::process::Command;
+use std::time::Instant;
+
+use crate::server::Server;
+use crate::{cargo, root, run, say, tools};
+
+/// What the download may weigh compressed, in bytes.
+const BUDGET: usize = 350_000;
+
+/// Runs every check; all of them, also after one has failed.
+pub fn all() -> Result<(), String> {
+    let begin = Instant::now();
+    let mut failed = Vec::new();
+    let mut passed = 0;
+    let mut step = |name: &str, done: &mut dyn FnMut() -> Result<(), String>| {
+        say(name);
+        let from = Instant::now();
+        match done() {
+            Ok(()) => passed += 1,
+            Err(message) => {
+                eprintln!("{name}: {message}");
+                failed.push(name.to_string());
+            }
+        }
+        println!("   {:.0} s", from.elapsed().as_secs_f64());
+    };
+    step("tools for the checks", &mut || tools::checkers().and_then(|()| tools::target()));
+    step("format", &mut || cargo(&["fmt", "--all", "--check"]));
+    let strict = ["--", "-D", "warnings"];
+    step("lints, native", &mut || {
+        let mut arguments = vec!["clippy", "--locked", "--workspace", "--all-targets", "--all-features"];
+        arguments.extend(strict);
+        cargo(&arguments)
+    });
+    step("lints, wasm32", &mut || {
+        let mut arguments =
+            vec!["clippy", "--locked", "-p", "strikeline-page", "--target", "wasm32-unknown-unknown"];
+        arguments.extend(strict);
+        cargo(&arguments)
+    });
+    step("unit, reference and documentation tests", &mut || cargo(&["test", "--locked", "--workspace"]));
+    step("documentation without warnings", &mut || {
+        let mut command = Command::new("cargo");
+        command.args(["doc", "--locked", "--workspace", "--no-deps", "--document-private-items"]);
+        run(command.env("RUSTDOCFLAGS", "-D warnings"))
+    });
+    step("the page", &mut || crate::build().map(|_| ()));
+    step("size of the download", &mut || size(&root().join("dist")));
+    step("the page in a browser", &mut || in_browser(&root().join("dist")));
+    step("the charge's speed", &mut || {
+        cargo(&["run", "--release", "--locked", "-q", "-p", "strikeline-tests", "--example", "bench"])
+    });
+    println!("{passed} passed, {} failed", failed.len());
+    println!("   {:.0} s in all", begin.elapsed().as_secs_f64());
+    if failed.is_empty() { Ok(()) } else { Err(format!("failed: {}", failed.join(", "))) }
+}
+
+/// Prints the compressed size of the download, file by file.
+fn size(folder: &Path) -> Result<(), String> {
+    let mut total = 0;
+    let entries = std::fs::read_dir(folder).map_err(|e| e.to_string())?;
+    for entry in entries.flatten() {
+        let bytes = std::fs::read(entry.path()).map_err(|e| e.to_string())?;
+        let mut packer = flate2::write::GzEncoder::new(Vec::new(), flate2::Compression::best());
+        packer.write_all(&bytes).map_err(|e| e.to_string())?;
+        let packed = packer.finish().map_err(|e| e.to_string())?.len();
+        total += packed;
+        println!(
+            "   {:>9} bytes, {packed:>8} compressed: {}",
+            bytes.len(),
+            entry.file_name().to_string_lossy()
+        );
+    }
+    println!("   download: {:.1} kB compressed (gzip), budget {} kB", total as f64 / 1e3, BUDGET / 1000);
+    if total <= BUDGET { Ok(()) } else { Err(format!("{total} bytes are more than {BUDGET}")) }
+}
+
+/// Serves the page and runs the browser tests on it.
+fn in_browser(folder: &Path) -> Result<(), String> {
+    tools::browser()?;
+    let server = Server::bind(folder, 8090)?;
+    let address = server.address();
+    std::thread::spawn(move || server.serve());
+    let mut command = Command::new("cargo");
+    command.args([
+        "test",
+        "--locked",
+        "-p",
+        "strikeline-tests",
+        "--features",
+        "browser",
+        "--test",
+        "browser",
+    ]);
+    command.args(["--", "--nocapture", "--test-threads", "1"]);
+    run(command.env("STRIKELINE_PAGE", address))
+}
+
+/// Pictures of the page: desktop and phone, light and dark, and the print.
+pub fn shots(folder: &Path) -> Result<(), String> {
+    tools::browser()?;
+    let server = Server::bind(folder, 8090)?;
+    let address = server.address();
+    std::thread::spawn(move || server.serve());
+    let out = root().join("target/shots");
+    std::fs::create_dir_all(&out).map_err(|e| e.to_string())?;
+    let dark = "--blink-settings=preferredColorScheme=0";
+    for (name, size, more) in [
+        ("desktop-light", "1400,2600", None),
+        ("desktop-dark", "1400,2600", Some(dark)),
+        ("phone-light", "500,3600", None),
+        ("phone-dark", "500,3600", Some(dark)),
+    ] {
+        let picture = format!("--screenshot={}", out.join(format!("{name}.png")).display());
+        let mut command = chromium();
+        command.arg(format!("--window-size={size}")).arg(picture).args(more).arg(&address);
+        run(&mut command)?;
+    }
+    let print = format!("--print-to-pdf={}", out.join("print.pdf").display());
+    run(chromium().args([&print, "--no-pdf-header-footer", &address]))?;
+    say(&format!("pictures stand in {}", out.display()));
+    Ok(())
+}
+
+fn chromium() -> Command {
+    let mut command = Command::new("chromium");
+    let profile = std::env::temp_dir().join(format!("strikeline-shots-{}", std::process::id()));
+    command.arg(format!("--user-data-dir={}", profile.display())).args([
+        "--headless",
+        "--no-sandbox",
+        "--disable-gpu",
+        "--disable-quic",
+        "--no-first-run",
+        "--disable-background-networking",
+        "--disable-component-update",
+        "--disable-sync",
+        "--hide-scrollbars",
+        "--virtual-time-budget=4000",
+    ]);
+    command
+}

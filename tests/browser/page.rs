@@ -1,0 +1,246 @@
+//! The page in a real Chromium, as its user meets it.
+//!
+//! `cargo xtask test` serves the built page and tells its address in `STRIKELINE_PAGE`.
+
+use std::process::Child;
+use std::time::Duration;
+
+use fantoccini::{Client, ClientBuilder, Locator};
+use serde_json::{Value, json};
+use strikeline_design::check::check;
+use strikeline_design::design::Design;
+use strikeline_design::{file, link, report};
+
+struct Browser {
+    client: Client,
+    driver: Child,
+    address: String,
+}
+
+impl Browser {
+    async fn start() -> Self {
+        let address =
+            std::env::var("STRIKELINE_PAGE").expect("STRIKELINE_PAGE tells where the page is served");
+        let port = std::net::TcpListener::bind("127.0.0.1:0")
+            .and_then(|l| l.local_addr())
+            .expect("a free port")
+            .port();
+        let driver = std::process::Command::new("chromedriver")
+            .arg(format!("--port={port}"))
+            .stdout(std::process::Stdio::null())
+            .spawn()
+            .expect("chromedriver starts");
+        let profile = std::env::temp_dir().join(format!("strikeline-{}-{port}", std::process::id()));
+        let arguments = [
+            "--headless",
+            "--no-sandbox",
+            "--disable-gpu",
+            "--disable-quic",
+            "--no-first-run",
+            "--disable-background-networking",
+            "--disable-component-update",
+            "--disable-sync",
+            "--window-size=1400,1000",
+            &format!("--user-data-dir={}", profile.display()),
+        ];
+        let wanted = json!({
+            "goog:chromeOptions": { "args": arguments },
+            "goog:loggingPrefs": { "browser": "ALL" },
+        });
+        let Value::Object(wanted) = wanted else { unreachable!("an object was written above") };
+        let mut last = String::new();
+        for _ in 0..100 {
+            let mut builder = ClientBuilder::new(hyper_util::client::legacy::connect::HttpConnector::new());
+            match builder.capabilities(wanted.clone()).connect(&format!("http://127.0.0.1:{port}")).await {
+                Ok(client) => return Self { client, driver, address },
+                Err(error) => last = error.to_string(),
+            }
+            tokio::time::sleep(Duration::from_millis(100)).await;
+        }
+        panic!("no session with chromedriver: {last}");
+    }
+
+    async fn open(&self, fragment: &str) {
+        // A fragment alone would not load the page anew.
+        self.client.goto("about:blank").await.expect("a blank page");
+        self.client.goto(&format!("{}{fragment}", self.address)).await.expect("the page");
+        self.until("document.body.hasAttribute('data-chain-ms')").await;
+    }
+
+    async fn script(&self, text: &str) -> Value {
+        self.client.execute(text, vec![]).await.expect("the script runs")
+    }
+
+    async fn until(&self, condition: &str) {
+        for _ in 0..100 {
+            if self.script(&format!("return Boolean({condition})")).await == json!(true) {
+                return;
+            }
+            tokio::time::sleep(Duration::from_millis(50)).await;
+        }
+        panic!("never: {condition}");
+    }
+
+    async fn text(&self, css: &str) -> String {
+        let found = self.client.find(Locator::Css(css)).await.expect(css);
+        found.text().await.expect("its text")
+    }
+
+    async fn fill(&self, key: &str, text: &str) {
+        let id = format!("f-{}", key.replace('.', "-"));
+        let script = format!(
+            "const e = document.getElementById({id}); e.value = {text}; e.dispatchEvent(new Event('input', {{bubbles: true}}));",
+            id = json!(id),
+            text = json!(text)
+        );
+        self.script(&script).await;
+    }
+
+    async fn end(mut self) {
+        self.client.close().await.ok();
+        self.driver.kill().ok();
+        self.driver.wait().ok();
+    }
+}
+
+fn report_of(design: &Design) -> String {
+    let checked = check(design).expect("sound");
+    report::json(&design.name, &checked, &report::answer(&checked), report::Extras::default()).to_string()
+}
+
+async fn whole_path(browser: &Browser) {
+    // It opens on the worked example, with a verdict.
+    browser.open("").await;
+    assert!(browser.text(".word").await.contains("Borderline"));
+    assert_eq!(browser.text(".facts .value").await, "353");
+
+    // A change gives a new verdict at once.
+    browser.fill("board.pairs", "2").await;
+    assert!(
+        browser.text(".word").await.contains("Holds"),
+        "two pairs hold: {}",
+        browser.text(".sentence").await
+    );
+
+    // What is wrong stands at its field; the last good result stays, marked.
+    browser.fill("leads.load_section", "0.75 m").await;
+    let fault = browser.text("#f-leads-load_section-fault").await;
+    assert!(fault.contains("0.75 m is a length"), "{fault}");
+    assert!(browser.text("#stale").await.contains("last good result"));
+    assert!(browser.text(".word").await.contains("Holds"));
+    let invalid = browser
+        .script("return document.getElementById('f-leads-load_section').getAttribute('aria-invalid')")
+        .await;
+    assert_eq!(invalid, json!("true"));
+    browser.fill("leads.load_section", "AWG 18").await;
+    assert_eq!(browser.text("#stale").await, "");
+
+    // Undo brings the text back.
+    browser.script("document.getElementById('undo').click()").await;
+    let back = browser.script("return document.getElementById('f-leads-load_section').value").await;
+    assert_eq!(back, json!("0.75 m"));
+}
+
+async fn links(browser: &Browser) {
+    // The address holds the design: opened elsewhere it gives the same.
+    let mut design = Design::demo();
+    design.set("cell.capacity", "2,8 Ah");
+    design.set("load.strike", "3.45 V");
+    browser.open(&link::encode(&design)).await;
+    let capacity = browser.script("return document.getElementById('f-cell-capacity').value").await;
+    assert_eq!(capacity, json!("2,8 Ah"));
+    let address = browser.script("return location.hash").await;
+    assert_eq!(address, json!(link::encode(&design)));
+
+    // A damaged, newer or hostile link is one sentence, and no script of it runs.
+    for (bad, said) in [("#1.AAAA", "damaged"), ("#9.abc", "version 9")] {
+        browser.open(bad).await;
+        let notice = browser.text("#notice").await;
+        assert!(notice.contains(said) && notice.contains("unchanged"), "{bad}: {notice}");
+        assert!(!browser.text(".word").await.is_empty());
+    }
+    let mut hostile = Design::demo();
+    hostile.name = "<img src=x onerror=\"window.broken=1\">".into();
+    hostile.set("cell.capacity", "\"><img src=x onerror=\"window.broken=1\">");
+    browser.open(&link::encode(&hostile)).await;
+    assert_eq!(browser.script("return window.broken === undefined").await, json!(true));
+}
+
+async fn same_report(browser: &Browser) {
+    browser.open("").await;
+    let mut designs = vec![Design::demo()];
+    for (key, text) in [
+        ("use.ambient", "-10 °C"),
+        ("load.law", "power"),
+        ("load.surge", "1.5 A"),
+        ("load.esr", "20 mΩ"),
+        ("second.fitted", "yes"),
+        ("board.arrangement", "no_board"),
+        ("cell.chemistry", "lfp_cylinder"),
+    ] {
+        let mut design = designs.last().expect("one").clone();
+        design.set(key, text);
+        designs.push(design);
+    }
+    for (k, design) in designs.iter().enumerate() {
+        let script = format!("return window.wasmBindings.report_json({})", json!(file::to_json(design)));
+        let page = browser.script(&script).await;
+        assert_eq!(page, json!(report_of(design)), "design {k}: page and native differ");
+    }
+    println!("   native and page: the same report to the last bit for {} designs", designs.len());
+}
+
+async fn quick(browser: &Browser) {
+    browser.open("").await;
+    let mut times = Vec::new();
+    for k in 0..21 {
+        browser.fill("cell.capacity", &format!("1.{k:02} Ah")).await;
+        let took = browser.script("return document.body.getAttribute('data-chain-ms')").await;
+        times.push(took.as_str().and_then(|t| t.parse::<f64>().ok()).expect("a time"));
+    }
+    times.sort_by(f64::total_cmp);
+    let median = times[times.len() / 2];
+    println!(
+        "   from a changed field to the drawn page: median {median:.1} ms, slowest {:.1} ms",
+        times[times.len() - 1]
+    );
+    assert!(median <= 50.0, "median {median} ms; at most 50 ms");
+}
+
+async fn narrow(browser: &Browser) {
+    browser.client.set_window_size(500, 900).await.expect("a smaller window");
+    browser.open("").await;
+    for width in [390, 320] {
+        let script = format!(
+            "document.documentElement.style.width='{width}px'; window.dispatchEvent(new Event('resize'));"
+        );
+        browser.script(&script).await;
+        let over = browser.script("return [...document.querySelectorAll('main, aside, header, .part, figure, svg')].filter(e => e.getBoundingClientRect().right > document.documentElement.getBoundingClientRect().right + 1).length").await;
+        assert_eq!(over, json!(0), "{width} px: something stands out");
+    }
+    browser.client.set_window_size(1400, 1000).await.expect("the window");
+}
+
+async fn quiet(browser: &Browser) {
+    browser.open("").await;
+    browser.fill("use.press", "2 s").await;
+    let foreign = browser
+        .script("return performance.getEntriesByType('resource').map(e => e.name).filter(n => !n.startsWith(location.origin) && !n.startsWith('data:'))")
+        .await;
+    assert_eq!(foreign, json!([]), "a request left the page's own address");
+}
+
+#[test]
+fn page_in_a_browser() {
+    let runtime = tokio::runtime::Builder::new_current_thread().enable_all().build().expect("a runtime");
+    runtime.block_on(async {
+        let browser = Browser::start().await;
+        whole_path(&browser).await;
+        links(&browser).await;
+        same_report(&browser).await;
+        quick(&browser).await;
+        narrow(&browser).await;
+        quiet(&browser).await;
+        browser.end().await;
+    });
+}
