@@ -227,7 +227,7 @@ impl Simulator<'_> {
             }
             return false;
         }
-        let fast = self.fast_time(point);
+        let fast = self.fast_time(&point);
         // The operating point must move slowly against the capacitor's time constant: what is
         // neglected is τ² times its second derivative, about the drift over the shortest slow time.
         let mut slow_rate = self.circuit.branch_rate.iter().copied().fold(0.0, f64::max);
