@@ -8,7 +8,7 @@ use strikeline_core::load::{LitDraw, Load};
 use strikeline_core::math::{Monotone, Polyline, exp};
 use strikeline_core::setup::{Arrangement, Path, Setup, Use};
 use strikeline_core::units::{AmpHours, Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
-use strikeline_core::wiring::{self, Conductor};
+use strikeline_core::wiring::{Conductor, Lead, Series};
 
 use crate::catalogue::{Kind, field};
 use crate::design::Design;
@@ -461,9 +461,16 @@ impl Reader<'_> {
         let switch = self.toleranced("leads.switch");
         let t = Celsius(t?);
         let switch = switch?;
-        let ahead = wiring::lead(cell.0?, cell.1?, conductor, t) + Ohms(joints.0?);
-        let after = wiring::lead(load.0?, load.1?, conductor, t) + Ohms(joints.1?);
-        let of = |switch: f64| Path { ahead, after: after + Ohms(switch) };
+        let lead = |length_m, area_mm2| Lead { length_m, area_mm2, conductor, temperature: t };
+        let series = Series {
+            cell_leads: lead(cell.0?, cell.1?),
+            fuse: Ohms(0.0), // entered as one of the joints
+            cell_joints: Ohms(joints.0?),
+            load_leads: lead(load.0?, load.1?),
+            load_joints: Ohms(joints.1?),
+            switch: Ohms(0.0),
+        };
+        let of = |switch: f64| Series { switch: Ohms(switch), ..series }.path();
         let paths = (of(switch.typical), of(switch.max));
         // A path of nothing at all has no current to solve for.
         if paths.0.ahead.0 + paths.0.after.0 <= 0.0 {
