@@ -2,3 +2,5 @@
 
 pub mod case;
 pub mod derive;
+pub mod draw;
+pub mod flat;

@@ -7,6 +7,7 @@ pub mod board;
 pub mod cell;
 pub mod charge;
 mod circuit;
+pub mod driver;
 pub mod load;
 pub mod math;
 pub mod press;

@@ -73,6 +73,14 @@ quantity!(
     Farads, "F"
 );
 quantity!(
+    /// Inductance, in H.
+    Henries, "H"
+);
+quantity!(
+    /// Frequency, in Hz.
+    Hertz, "Hz"
+);
+quantity!(
     /// Time, in s.
     Seconds, "s"
 );
