@@ -1,7 +1,7 @@
 //! Every check, in the order in which a fault is cheapest to find.
 
 use std::io::Write;
-use std::path::Path;
+use std::path::{Path, PathBuf};
 use std::process::Command;
 use std::time::Instant;
 
@@ -48,9 +48,15 @@ pub fn all() -> Result<(), String> {
         command.args(["doc", "--locked", "--workspace", "--no-deps", "--document-private-items"]);
         run(command.env("RUSTDOCFLAGS", "-D warnings"))
     });
-    step("the page", &mut || crate::build().map(|_| ()));
-    step("size of the download", &mut || size(&root().join("dist")));
-    step("the page in a browser", &mut || in_browser(&root().join("dist")));
+    let mut page = None;
+    step("the page", &mut || {
+        page = Some(crate::build()?);
+        Ok(())
+    });
+    // An older page may lie there; it is not the one to judge.
+    let built = page.as_deref().ok_or("not run: the page could not be built");
+    step("size of the download", &mut || size(built?));
+    step("the page in a browser", &mut || in_browser(built?));
     step("the charge's speed", &mut || {
         cargo(&["run", "--release", "--locked", "-q", "-p", "strikeline-tests", "--example", "bench"])
     });
@@ -59,24 +65,36 @@ pub fn all() -> Result<(), String> {
     if failed.is_empty() { Ok(()) } else { Err(format!("failed: {}", failed.join(", "))) }
 }
 
-/// Prints the compressed size of the download, file by file.
+/// Prints the compressed size of the download, file by file; an error above the budget.
 fn size(folder: &Path) -> Result<(), String> {
     let mut total = 0;
-    let entries = std::fs::read_dir(folder).map_err(|e| e.to_string())?;
-    for entry in entries.flatten() {
-        let bytes = std::fs::read(entry.path()).map_err(|e| e.to_string())?;
+    for file in files(folder)? {
+        let bytes = std::fs::read(&file).map_err(|e| format!("{}: {e}", file.display()))?;
         let mut packer = flate2::write::GzEncoder::new(Vec::new(), flate2::Compression::best());
         packer.write_all(&bytes).map_err(|e| e.to_string())?;
         let packed = packer.finish().map_err(|e| e.to_string())?.len();
         total += packed;
-        println!(
-            "   {:>9} bytes, {packed:>8} compressed: {}",
-            bytes.len(),
-            entry.file_name().to_string_lossy()
-        );
+        let name = file.strip_prefix(folder).unwrap_or(&file);
+        println!("   {:>9} bytes, {packed:>8} compressed: {}", bytes.len(), name.display());
     }
     println!("   download: {:.1} kB compressed (gzip), budget {} kB", total as f64 / 1e3, BUDGET / 1000);
-    if total <= BUDGET { Ok(()) } else { Err(format!("{total} bytes are more than {BUDGET}")) }
+    match total {
+        0 => Err("there is nothing to download".into()),
+        _ if total > BUDGET => Err(format!("{total} bytes are more than {BUDGET}")),
+        _ => Ok(()),
+    }
+}
+
+/// Every file below a folder, in order of name.
+fn files(folder: &Path) -> Result<Vec<PathBuf>, String> {
+    let failed = |error: std::io::Error| format!("{}: {error}", folder.display());
+    let mut found = Vec::new();
+    for entry in std::fs::read_dir(folder).map_err(failed)? {
+        let path = entry.map_err(failed)?.path();
+        if path.is_dir() { found.extend(files(&path)?) } else { found.push(path) }
+    }
+    found.sort();
+    Ok(found)
 }
 
 /// Serves the page and runs the browser tests on it.

@@ -42,9 +42,11 @@ pub fn say(text: &str) {
     println!("== {text}");
 }
 
-/// The top folder of the project.
+/// The top folder of the project: the one that cargo runs in now, also when it was moved after this was built.
 pub fn root() -> PathBuf {
-    let here = PathBuf::from(env!("CARGO_MANIFEST_DIR"));
+    let now = std::env::var_os("CARGO_MANIFEST_DIR").map(PathBuf::from);
+    let then = PathBuf::from(env!("CARGO_MANIFEST_DIR"));
+    let here = now.filter(|folder| folder.ends_with("crate/xtask")).unwrap_or(then);
     here.ancestors().nth(2).map_or(here.clone(), std::path::Path::to_path_buf)
 }
 
@@ -66,6 +68,9 @@ pub fn cargo(arguments: &[&str]) -> Result<(), String> {
 /// Builds the page into dist/.
 fn build() -> Result<PathBuf, String> {
     let path = tools::bring()?;
+    // Trunk runs cargo without network, so what the page is made of is brought before.
+    say("fetching the crates the page is made of, where they are missing");
+    cargo(&["fetch", "--locked", "--quiet"])?;
     say("building the page (release)");
     run(Command::new("trunk")
         .args(["build", "--release", "--locked"])
@@ -82,7 +87,11 @@ fn serve(options: &[&str]) -> Result<(), String> {
             "--no-open" => open = false,
             "--port" => {
                 let text = options.next().ok_or("--port wants a number")?;
-                port = text.parse().map_err(|_| format!("--port {text}: accepted is 1 to 65535"))?;
+                port = text
+                    .parse()
+                    .ok()
+                    .filter(|port| *port > 0)
+                    .ok_or(format!("--port {text}: accepted is 1 to 65535"))?;
             }
             other => return Err(format!("{other} is not an option\n{USAGE}")),
         }

@@ -1,7 +1,6 @@
 //! What the builds need beyond cargo, brought when it is missing.
 
 use std::ffi::OsString;
-use std::path::Path;
 use std::process::Command;
 
 use crate::{root, run, say};
@@ -21,7 +20,8 @@ fn output(program: &str, arguments: &[&str], path: Option<&OsString>) -> Option<
 }
 
 fn debian_root() -> bool {
-    Path::new("/etc/debian_version").exists()
+    // Not its descendants: not every one has these packages under these names.
+    std::fs::read_to_string("/etc/os-release").is_ok_and(|text| text.lines().any(|line| line == "ID=debian"))
         && output("id", &["-u"], None).is_some_and(|id| id.trim() == "0")
 }
 
@@ -68,6 +68,11 @@ fn bindgen_version() -> Result<String, String> {
     lines.find(|l| *l == "name = \"wasm-bindgen\"").ok_or("wasm-bindgen is not in Cargo.lock")?;
     let version =
         lines.next().and_then(|l| l.split('"').nth(1)).ok_or("Cargo.lock: no version of wasm-bindgen")?;
+    let wanted = format!("wasm_bindgen = \"{version}\"");
+    let trunk = std::fs::read_to_string(root().join("Trunk.toml")).map_err(|e| format!("Trunk.toml: {e}"))?;
+    if !trunk.lines().any(|line| line.trim() == wanted) {
+        return Err(format!("Trunk.toml: its tools must say {wanted}, the version in Cargo.lock"));
+    }
     Ok(version.to_string())
 }
 
@@ -110,5 +115,9 @@ pub fn bring() -> Result<OsString, String> {
 /// A browser and its driver.
 pub fn browser() -> Result<(), String> {
     let there = ["chromium", "chromedriver"].iter().all(|p| output(p, &["--version"], None).is_some());
-    if there { Ok(()) } else { packages(&["chromium", "chromium-driver"], "a browser to test the page in") }
+    if there {
+        Ok(())
+    } else {
+        packages(&["chromium", "chromium-driver", "fonts-dejavu-core"], "a browser to test the page in")
+    }
 }
