@@ -9,6 +9,8 @@
 //! What it leaves out is checked afterwards: where the slow states would have moved the source by more
 //! than a few microvolts, where a surge flows or a sample is wanted, the stretch is left to the steps.
 
+use crate::load::LitDraw;
+
 use super::{
     BRANCH, CAP, CELL_T, CHARGE, Celsius, Crossing, Held, I2, MAX_BRANCHES, Mode, Moment, PAIR, SECOND,
     SECOND_T, SUMS, SWITCH_T, Simulator, Z,
@@ -127,16 +129,16 @@ impl Simulator<'_> {
             let charging = self.held(now, v).charging;
             if rising { charging > 0.0 } else { charging < 0.0 }
         };
-        let mut settled = None;
-        let (mut to, mut goal) = match threshold {
-            // i_C keeps its sign to the threshold wherever it has one change of sign at most.
-            Some((v, crossing)) if reaches(v) => (v, Goal::Threshold(crossing)),
-            _ => {
-                let v = self.operating_point(now, threshold.map(|(v, _)| v))?;
-                let side = if rising { -NEAR } else { NEAR };
-                settled = Some(v);
-                ((v + side), Goal::Settled)
-            }
+        let knot = self.turning_knot(now, threshold.map(|(v, _)| v));
+        let settled = match threshold {
+            // i_C keeps its sign to the threshold if it has one change of sign at most; constant power has two.
+            Some((v, _)) if knot.is_none() && reaches(v) => self.power_meeting(now, v),
+            _ => Some(self.operating_point(now, knot.or(threshold.map(|(v, _)| v)))?),
+        };
+        let (mut to, mut goal) = match (settled, threshold) {
+            (Some(v), _) => (v + if rising { -NEAR } else { NEAR }, Goal::Settled),
+            (None, Some((v, crossing))) => (v, Goal::Threshold(crossing)),
+            (None, None) => return None,
         };
         if (to - from.at.v) * from.at.charging <= 0.0 {
             return None;
@@ -164,6 +166,48 @@ impl Simulator<'_> {
         let path = self.circuit.path(e, point.cell.r0, self.factors(&now.y), v);
         let (draw, draw_slope) = self.circuit.draw(self.mode, v);
         Held { path, v, draw, draw_slope, charging: path.current - draw }
+    }
+
+    /// On a measured table that may rise and fall: the first of its points on the way to `limit` beyond which
+    /// the capacitor would turn back. Between two points the draw is straight, and there is one change of sign.
+    fn turning_knot(&self, now: &Moment<'_, '_>, limit: Option<f64>) -> Option<f64> {
+        let (Mode::Lit, LitDraw::Table(table)) = (self.mode, &self.setup.load.lit) else { return None };
+        let from = &now.point.at;
+        let rising = from.charging > 0.0;
+        let turns = |v: &f64| (self.held(now, *v).charging > 0.0) != rising;
+        if rising {
+            let far = limit.unwrap_or(f64::INFINITY);
+            table.x().iter().copied().filter(|v| (from.v..far).contains(v)).find(turns)
+        } else {
+            let far = limit.unwrap_or(0.0);
+            table.x().iter().rev().copied().filter(|v| *v > far && *v < from.v).find(turns)
+        }
+    }
+
+    /// Where the fall from above onto a constant power ends, if it does above `limit`.
+    ///
+    /// `i_C(V)` is concave on each straight piece of the switch's resistance, so Newton's rule comes down to the
+    /// upper meeting point and not past it; where there is none it leaves towards the limit or meets a slope
+    /// that leads nowhere. A bend between two pieces can take it past the point, which is then in a bracket.
+    fn power_meeting(&self, now: &Moment<'_, '_>, limit: f64) -> Option<f64> {
+        let (Mode::Lit, LitDraw::Power(_)) = (self.mode, &self.setup.load.lit) else { return None };
+        let mut point = now.point.at;
+        for _ in 0..60 {
+            let stiffness = point.path.conductance + point.draw_slope;
+            let next = point.v + point.charging / stiffness;
+            if stiffness <= 0.0 || next <= limit {
+                return None;
+            }
+            let moved = (next - point.v).abs();
+            point = self.held(now, next);
+            if moved < 1e-12 {
+                return Some(next);
+            }
+            if point.charging > 0.0 {
+                return self.operating_point(now, Some(next));
+            }
+        }
+        None
     }
 
     /// The operating point ahead, found by Newton's rule kept between the start and `limit`.
