@@ -61,7 +61,9 @@ impl Browser {
     }
 
     async fn open(&self, fragment: &str) {
-        // A fragment alone would not load the page anew.
+        // Nothing kept from before, and a page that is loaded anew: a fragment alone would not do that.
+        self.client.goto(&self.address).await.expect("the page");
+        self.script("localStorage.clear()").await;
         self.client.goto("about:blank").await.expect("a blank page");
         self.client.goto(&format!("{}{fragment}", self.address)).await.expect("the page");
         self.until("document.body.hasAttribute('data-chain-ms')").await;
@@ -96,8 +98,14 @@ impl Browser {
         self.script(&script).await;
     }
 
-    async fn end(mut self) {
-        self.client.close().await.ok();
+    async fn end(self) {
+        self.client.clone().close().await.ok();
+    }
+}
+
+impl Drop for Browser {
+    /// Also when a test fails: a driver left behind would keep the check waiting.
+    fn drop(&mut self) {
         self.driver.kill().ok();
         self.driver.wait().ok();
     }
@@ -163,6 +171,7 @@ async fn links(browser: &Browser) {
     hostile.name = "<img src=x onerror=\"window.broken=1\">".into();
     hostile.set("cell.capacity", "\"><img src=x onerror=\"window.broken=1\">");
     browser.open(&link::encode(&hostile)).await;
+    assert!(browser.text("#f-cell-capacity-fault").await.contains("does not begin with a number"));
     assert_eq!(browser.script("return window.broken === undefined").await, json!(true));
 }
 

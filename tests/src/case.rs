@@ -306,7 +306,7 @@ impl Case {
                 PressOptions { samples: press::sample_times(setup.usage.press), ..PressOptions::default() };
             return Ok(press_result(&setup, &self.name, &press::run(&setup, &start, &options)));
         }
-        let report = charge::run_from(&setup, &start);
+        let report = charge::run_from(&setup, &start, 50_000_000);
         Ok(charge_result(&setup, &self.name, &report))
     }
 }

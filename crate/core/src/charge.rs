@@ -12,17 +12,20 @@ use crate::report::{ChargeEnd, ChargeReport, Ledger, Limit, PressEnd, PressLine,
 use crate::setup::Setup;
 use crate::units::{AmpHours, Celsius, Joules, Seconds, Volts};
 
-/// Bound on the integration steps of one charge; reaching it is a stated outcome.
-pub const MAX_STEPS: u64 = 20_000_000;
+/// Usual bound on the integration steps of one charge; reaching it is a stated outcome.
+///
+/// A charge of a few hundred presses takes some ten thousand. A load that flickers at every press lights
+/// once per strike time, thousands of times a press: that is what the bound is for.
+pub const MAX_STEPS: u64 = 150_000;
 
 /// Simulates one charge.
 pub fn run(setup: &Setup) -> ChargeReport {
-    run_from(setup, &PressStart::relaxed(setup, 1.0, setup.usage.ambient))
+    run_from(setup, &PressStart::relaxed(setup, 1.0, setup.usage.ambient), MAX_STEPS)
 }
 
-/// Simulates a charge from another place than full and relaxed.
-pub fn run_from(setup: &Setup, start: &PressStart) -> ChargeReport {
-    follow(setup, start).0
+/// Simulates a charge from another place than full and relaxed, with a bound of its own.
+pub fn run_from(setup: &Setup, start: &PressStart, max_steps: u64) -> ChargeReport {
+    follow(setup, start, max_steps).0
 }
 
 /// Where the press with this index in the charge begins, to look at it more closely; `None` if the
@@ -30,12 +33,12 @@ pub fn run_from(setup: &Setup, start: &PressStart) -> ChargeReport {
 pub fn press_start(setup: &Setup, index: usize) -> Option<PressStart> {
     let mut limited = setup.clone();
     limited.usage.max_presses = u32::try_from(index).ok()?.checked_add(1)?;
-    let (report, start) = follow(&limited, &PressStart::relaxed(setup, 1.0, setup.usage.ambient));
+    let (report, start) = follow(&limited, &PressStart::relaxed(setup, 1.0, setup.usage.ambient), u64::MAX);
     (report.presses.len() == index + 1).then_some(start)
 }
 
 /// A charge from `start`, and where its last press began.
-fn follow(setup: &Setup, start: &PressStart) -> (ChargeReport, PressStart) {
+fn follow(setup: &Setup, start: &PressStart, max_steps: u64) -> (ChargeReport, PressStart) {
     let mut simulator = Simulator::new(setup, PressOptions::default().max_events);
     let mut y = start.state();
     let mut report = empty_report(setup);
@@ -49,7 +52,8 @@ fn follow(setup: &Setup, start: &PressStart) -> (ChargeReport, PressStart) {
         }
         last_start = PressStart::from_state(&y);
         let soc = y[Z];
-        let summary = simulator.press(&mut y, None);
+        let left = max_steps - report.steps;
+        let summary = simulator.press(&mut y, None, left);
         let full = summary.not_full.is_none();
         report.steps += u64::from(summary.steps);
         report.clock.0 += summary.end_time.0;
@@ -80,7 +84,7 @@ fn follow(setup: &Setup, start: &PressStart) -> (ChargeReport, PressStart) {
         if number >= setup.usage.max_presses {
             break ChargeEnd::PressLimit;
         }
-        if report.steps > MAX_STEPS {
+        if report.steps >= max_steps {
             break ChargeEnd::WorkLimit;
         }
         let rest = simulator.rest(&mut y, setup.usage.rest.0);

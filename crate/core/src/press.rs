@@ -136,7 +136,7 @@ impl Default for PressOptions {
 pub fn run(setup: &Setup, start: &PressStart, options: &PressOptions) -> PressReport {
     let mut simulator = Simulator::new(setup, options.max_events);
     let mut recorder = Recorder { events: Vec::new(), trace: Vec::new(), wanted: &options.samples };
-    let summary = simulator.press(&mut start.state(), Some(&mut recorder));
+    let summary = simulator.press(&mut start.state(), Some(&mut recorder), u64::MAX);
     PressReport { events: recorder.events, trace: recorder.trace, summary }
 }
 
@@ -350,7 +350,14 @@ impl<'a> Simulator<'a> {
     }
 
     /// One press from the state `y`, which it carries on; the capacitor starts and is left empty.
-    pub(crate) fn press(&mut self, y: &mut Y, recorder: Option<&mut Recorder<'_>>) -> PressSummary {
+    ///
+    /// - `max_steps`: a bound beside that on events.
+    pub(crate) fn press(
+        &mut self,
+        y: &mut Y,
+        recorder: Option<&mut Recorder<'_>>,
+        max_steps: u64,
+    ) -> PressSummary {
         self.begin();
         let soc_start = y[Z];
         let mut now = Moment {
@@ -368,7 +375,7 @@ impl<'a> Simulator<'a> {
         if now.point.at.v >= self.setup.load.start.0 {
             self.cross(Crossing::Start, &mut now);
         }
-        let end = self.follow(&mut now);
+        let end = self.follow(&mut now, max_steps);
         if end == PressEnd::EventLimit {
             self.log(&mut now, EventKind::EventLimit);
         }
@@ -396,9 +403,9 @@ impl<'a> Simulator<'a> {
     }
 
     /// From the first instant to the end of the press.
-    fn follow(&mut self, now: &mut Moment<'_, '_>) -> PressEnd {
+    fn follow(&mut self, now: &mut Moment<'_, '_>, max_steps: u64) -> PressEnd {
         let press = self.setup.usage.press.0;
-        let bound = u64::from(self.max_events).saturating_mul(STEPS_PER_EVENT).max(100_000);
+        let bound = u64::from(self.max_events).saturating_mul(STEPS_PER_EVENT).max(100_000).min(max_steps);
         let mut h = self.first_step(&now.point);
         let mut fresh = true;
         loop {

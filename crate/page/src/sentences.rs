@@ -150,6 +150,18 @@ pub fn arrangement_warning(setup: &Setup) -> Option<&'static str> {
     }
 }
 
+/// What is said above a result that does not belong to what is entered; empty where it does.
+///
+/// - `before`: whether there is an earlier result to show.
+pub fn stale(faults: usize, before: bool) -> String {
+    let who = match faults {
+        0 => return String::new(),
+        1 => "One field needs you.".to_string(),
+        n => format!("{n} fields need you."),
+    };
+    if before { format!("{who} What stands below is the last good result, not this design's.") } else { who }
+}
+
 /// An event as a sentence.
 pub fn event(setup: &Setup, e: &Event) -> String {
     let what = match e.kind {

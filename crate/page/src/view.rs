@@ -16,7 +16,7 @@ use web_sys::{
 use crate::chart::Chart;
 use crate::form;
 use crate::number::fixed;
-use crate::results;
+use crate::{results, sentences};
 
 /// Where the last design is kept in the browser.
 const KEPT: &str = "strikeline.design";
@@ -181,18 +181,12 @@ impl Page {
             main.set_class_name(if stale { "stale" } else { "" });
         }
         if let Some(note) = self.element("stale") {
-            let count = faults.len();
-            let text = match (stale, count) {
-                (false, _) => String::new(),
-                (true, 1) => {
-                    "One field needs you. What stands below is the last good result, not this design's."
-                        .into()
-                }
-                (true, _) => format!(
-                    "{count} fields need you. What stands below is the last good result, not this design's."
-                ),
-            };
-            note.set_text_content(Some(&text));
+            note.set_text_content(Some(&sentences::stale(faults.len(), self.checked.is_some())));
+        }
+        if self.checked.is_none()
+            && let Some(main) = self.element("results")
+        {
+            main.set_text_content(Some("There is no result yet."));
         }
         self.keep();
         if let Some(clock) = clock {
