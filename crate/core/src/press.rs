@@ -51,7 +51,7 @@ type Y = [f64; STATES];
 type Step = dormand_prince::Step<Point, STATES, SUMS>;
 
 /// What one step may be wrong by, per state: a microvolt and what makes one.
-const TOLERANCE: Y = [3e-7, 1e-6, 1e-6, 1e-6, 2e-4, 1e-3, 1e-3, 2e-6];
+const TOLERANCE: Y = [3e-7, 1e-6, 1e-6, 1e-6, 2e-4, 1e-3, 1e-3, 1e-6];
 /// The capacitor is slaved once it is this close to the operating point, in V.
 const SLAVED_WITHIN: f64 = 1e-6;
 /// How finely an event is placed inside a step, as a fraction of it.
