@@ -150,7 +150,9 @@ fn law_a_trip_never_comes_before_its_shortest_delay() {
     assert!(trips > 100, "only {trips} trips were drawn");
 }
 
-/// Where the lit draw does not rise when the voltage falls, more resistance is less of everything.
+/// With a constant lit draw, more resistance brings the end nearer. The draw before the arc lights is a
+/// resistance and falls a little with the voltage, so a press takes a little less charge: one press more is
+/// within the law where the curve is steep.
 #[test]
 fn law_presses_do_not_rise_with_resistance() {
     let mut compared = 0;
@@ -164,7 +166,12 @@ fn law_presses_do_not_rise_with_resistance() {
         let ends = |r: &ChargeReport| matches!(r.end, ChargeEnd::NoLitTime(_));
         if ends(&a) && ends(&b) {
             compared += 1;
-            assert!(b.full_presses <= a.full_presses, "{} then {} full presses", a.full_presses, b.full_presses);
+            assert!(
+                b.full_presses <= a.full_presses + 1,
+                "{} then {} full presses",
+                a.full_presses,
+                b.full_presses
+            );
         }
     });
     assert!(compared >= 30, "only {compared} pairs could be compared");
