@@ -54,6 +54,8 @@ type Step = dormand_prince::Step<Point, STATES, SUMS>;
 const TOLERANCE: Y = [3e-7, 1e-6, 1e-6, 1e-6, 2e-4, 1e-3, 1e-3, 1e-6];
 /// The capacitor is slaved once it is this close to the operating point, in V.
 const SLAVED_WITHIN: f64 = 1e-6;
+/// How far the solved voltage of a slaved capacitor may part from its integrated drift in a step, in V.
+const DRIFT_WITHIN: f64 = 1e-5;
 /// How finely an event is placed inside a step, as a fraction of it.
 const EVENT_WITHIN: f64 = 1e-8;
 /// Bound on steps per press: far more than a press with the largest number of events needs.
@@ -474,6 +476,9 @@ impl<'a> Simulator<'a> {
             // The slaved voltage is not in the error estimate, so a decaying surge could be stepped over.
             *h = h.min(0.7 * self.setup.load.surge_time.0);
         }
+        if self.slaved {
+            now.y[CAP] = now.point.at.v;
+        }
         let whole = *h >= left;
         let step = self.step(&now.y, now.t, if whole { left } else { *h }, &now.point);
         now.tally.steps += 1;
@@ -612,11 +617,15 @@ impl<'a> Simulator<'a> {
 /// Size of a step's error against what is allowed; not finite where a rate is not.
 fn error_size(step: &Step, slaved: bool) -> f64 {
     let states = if slaved { CAP } else { STATES };
-    let parts = step.error.iter().zip(&TOLERANCE).take(states);
-    parts.fold(0.0, |size: f64, (error, allowed)| {
-        let part = error.abs() / allowed;
-        if part.is_nan() || size.is_nan() { f64::NAN } else { size.max(part) }
-    })
+    let parts = step.error.iter().zip(&TOLERANCE).take(states).map(|(error, allowed)| error.abs() / allowed);
+    // A slaved voltage is solved for; its integrated drift must come to the same.
+    let solved = slaved.then(|| (step.to[CAP] - step.last.at.v).abs() / DRIFT_WITHIN);
+    parts.chain(solved).fold(
+        0.0,
+        |size: f64, part| {
+            if part.is_nan() || size.is_nan() { f64::NAN } else { size.max(part) }
+        },
+    )
 }
 
 enum Deadline {

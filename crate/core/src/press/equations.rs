@@ -189,7 +189,7 @@ impl Simulator<'_> {
             rate[SECOND_T] =
                 (i2 * point.at.path.second * s.thermal_k_per_w - (y[SECOND_T] - ambient)) / s.thermal_time_s;
         }
-        rate[CAP] = if self.slaved { 0.0 } else { point.at.charging / self.setup.load.capacitance.0 };
+        rate[CAP] = point.at.charging / self.setup.load.capacitance.0;
         let e_rate = point.cell.ocv_slope * rate[Z] + point.cell.entropy * rate[CELL_T] - polar_rate;
         let r0_rate = point.cell.r0_slope.0 * rate[Z] + point.cell.r0_slope.1 * rate[CELL_T];
         let drift =
@@ -203,6 +203,10 @@ impl Simulator<'_> {
             0.0
         };
         point.drift = (drift + surge_drift) / stiffness;
+        if self.slaved {
+            // Kept beside the solved voltage, to be held against it.
+            point.rate[CAP] = if self.mode == Mode::Pinned { 0.0 } else { point.drift };
+        }
     }
 
     /// Time constant with which the capacitor follows.
