@@ -131,7 +131,7 @@ fn law_a_trip_never_comes_before_its_shortest_delay() {
     let mut trips = 0;
     drawn(0x1a3_0003, 2000, |setup| {
         let start = PressStart::relaxed(setup, 0.4, setup.usage.ambient);
-        let report = press::run(setup, &start, &PressOptions::default());
+        let report = press::run(setup, &start, &PressOptions { max_events: 2000, ..PressOptions::default() });
         if let PressEnd::Opened(_) = report.summary.end {
             trips += 1;
             let boards = setup.board_in_path().into_iter().chain(setup.second_protector.as_ref());
