@@ -20,7 +20,9 @@ strikeline-batch link design.json
 strikeline-batch open '#1.…'
     the design file of a link
 strikeline-batch demo
-    the worked example as a design file";
+    the worked example as a design file
+strikeline-batch fields
+    every field of a design file, with unit, range and default, as a table";
 
 fn main() -> ExitCode {
     let arguments: Vec<String> = std::env::args().skip(1).collect();
@@ -40,8 +42,10 @@ fn main() -> ExitCode {
 fn run(arguments: &[String]) -> Result<String, String> {
     let words: Vec<&str> = arguments.iter().map(String::as_str).collect();
     match words.as_slice() {
-        [] | ["--help" | "-h"] => Err(USAGE.into()),
+        [] => Err(USAGE.into()),
+        ["--help" | "-h"] => Ok(USAGE.to_string() + "\n"),
         ["demo"] => Ok(file::to_json(&Design::demo()) + "\n"),
+        ["fields"] => Ok(file::field_table()),
         ["link", path] => Ok(link::encode(&design(path)?) + "\n"),
         ["open", fragment] => {
             let design = link::decode(fragment).map_err(|e| e.to_string())?;
@@ -64,6 +68,9 @@ fn reports(words: &[&str]) -> Result<String, String> {
             flag if flag.starts_with("--") => return Err(format!("{flag} is not an option\n{USAGE}")),
             path => paths.push(path),
         }
+    }
+    if paths.is_empty() {
+        return Err(format!("no design file is given\n{USAGE}"));
     }
     for path in paths {
         let design = design(path)?;
@@ -121,6 +128,12 @@ fn replay_command(words: &[&str]) -> Result<String, String> {
     }
     let start = ReplayStart { soc, temperature: Celsius(first), ambient: Celsius(first) };
     let got = replay::run(&checked.nominal.cell, &start, &log.rows);
+    if let Some(p) = got.iter().find(|p| !p.voltage.0.is_finite() || !p.temperature.0.is_finite()) {
+        let at = p.time.0;
+        return Err(format!(
+            "{log_path}: the cell leaves all bounds at {at} s; the current is not one it can give"
+        ));
+    }
     let rms = (!log.voltage.is_empty()).then(|| {
         let squares: f64 = got.iter().zip(&log.voltage).map(|(p, v)| (p.voltage.0 - v).powi(2)).sum();
         (squares / got.len() as f64).sqrt()
@@ -156,8 +169,10 @@ struct Log {
 
 impl Log {
     fn read(text: &str) -> Result<Self, String> {
-        let mut reader =
-            csv::ReaderBuilder::new().trim(csv::Trim::All).comment(Some(b'#')).from_reader(text.as_bytes());
+        let mut reader = csv::ReaderBuilder::new()
+            .trim(csv::Trim::All)
+            .comment(Some(b'#'))
+            .from_reader(text.trim_start_matches('\u{feff}').as_bytes());
         let header = reader.headers().map_err(|e| e.to_string())?.clone();
         let column = |names: &[&str]| header.iter().position(|h| names.contains(&h));
         let time = column(&["time_s"]).ok_or("the column time_s is missing")?;
@@ -165,9 +180,9 @@ impl Log {
         let voltage = column(&["voltage_V"]);
         let temperature = column(&["temperature_C", "temperature_degC"]);
         let mut log = Self { rows: Vec::new(), voltage: Vec::new(), temperature: Vec::new() };
-        for (k, record) in reader.records().enumerate() {
-            let line = k + 2;
+        for record in reader.records() {
             let record = record.map_err(|e| e.to_string())?;
+            let line = record.position().map_or(0, csv::Position::line);
             let number = |column: usize| -> Result<f64, String> {
                 let text = record.get(column).unwrap_or("");
                 let value: f64 = text

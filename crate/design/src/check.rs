@@ -597,6 +597,9 @@ fn falling_slope(lit: &LitDraw, hold: f64) -> f64 {
 fn row(line: &str, x: &Shown, y: &Shown) -> Result<(f64, f64), String> {
     let parts: Vec<&str> = if line.contains(';') || line.contains('\t') {
         line.split([';', '\t']).map(str::trim).filter(|p| !p.is_empty()).collect()
+    } else if line.contains('.') && line.matches(',').count() == 1 && !line.contains(char::is_whitespace) {
+        // The point is the decimal sign, so the comma parts the columns.
+        line.split(',').map(str::trim).collect()
     } else {
         line.split_whitespace().collect()
     };

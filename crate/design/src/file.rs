@@ -7,9 +7,9 @@
 use serde::{Deserialize, Serialize};
 use serde_json::{Map, Value};
 
-use crate::catalogue::{FIELDS, Kind, Part, field};
+use crate::catalogue::{FIELDS, Kind, PARTS, Part, field};
 use crate::design::{Design, LONGEST_TEXT};
-use crate::quantity::quoted;
+use crate::quantity::{self, quoted};
 
 /// The version that is written.
 pub const VERSION: u32 = 1;
@@ -28,7 +28,16 @@ pub enum FileError {
     NotAFile(String),
     /// Written by a later page.
     #[error("the file is of version {0}, this page reads up to {VERSION}; open it with a newer page")]
-    Newer(u32),
+    Newer(u64),
+    /// The version is no whole number from 1.
+    #[error("strikeline is {0}; accepted is the version of the file, a whole number from 1 to {VERSION}")]
+    Version(String),
+    /// A text was wanted.
+    #[error("{0}: accepted is a text")]
+    NotAText(&'static str),
+    /// A part was wanted.
+    #[error("{0}: accepted is a group of fields in braces")]
+    NotAPart(String),
     /// A name that no field has.
     #[error("“{0}” is not a field of a design; the fields are listed in the documentation")]
     UnknownField(String),
@@ -87,6 +96,36 @@ pub fn to_json(design: &Design) -> String {
     serde_json::to_string_pretty(&file).unwrap_or_default()
 }
 
+/// The documentation of every field, as the rows of a Markdown table: key, what a number means, range,
+/// default, label.
+pub fn field_table() -> String {
+    let mut out = String::from(
+        "| field | a number is in | accepted | default | what it is |\n| --- | --- | --- | --- | --- |\n",
+    );
+    for f in FIELDS {
+        let (unit, accepted) = match f.kind {
+            Kind::Quantity { shown, min, max, optional, .. } => {
+                let unit = if shown.text.is_empty() { "a plain number" } else { shown.text };
+                let empty = if optional { ", or empty" } else { "" };
+                let range = format!("{} to {}", quantity::format(min, &shown), quantity::format(max, &shown));
+                (unit.to_string(), range + empty)
+            }
+            Kind::Choice(list) => {
+                let keys: Vec<String> = list.iter().map(|(key, _)| format!("`{key}`")).collect();
+                ("–".into(), keys.join(", "))
+            }
+            Kind::Table { x, y, .. } => {
+                let name = |text: &str| if text.is_empty() { "plain".to_string() } else { text.to_string() };
+                (format!("{}, {}", name(x.text), name(y.text)), "pairs".into())
+            }
+        };
+        let usual = Design::default();
+        let default = usual.get(f.key).replace('\n', "; ");
+        out += &format!("| `{}` | {unit} | {accepted} | {default} | {} |\n", f.key, f.label);
+    }
+    out
+}
+
 /// Reads a design file.
 ///
 /// # Errors
@@ -98,14 +137,17 @@ pub fn from_json(text: &str) -> Result<Design, FileError> {
     let text = text.trim_start_matches('\u{feff}');
     // The version first: a newer file may look different in everything else.
     let value: Value = serde_json::from_str(text).map_err(|e| FileError::NotAFile(e.to_string()))?;
-    let version = value.get("strikeline").and_then(Value::as_u64);
-    match version {
-        Some(v) if v > u64::from(VERSION) => {
-            return Err(FileError::Newer(u32::try_from(v).unwrap_or(u32::MAX)));
-        }
-        Some(_) => {}
-        None => {
-            return Err(FileError::NotAFile("the entry \"strikeline\" with its version is missing".into()));
+    let Some(version) = value.get("strikeline") else {
+        return Err(FileError::NotAFile("the entry \"strikeline\" with its version is missing".into()));
+    };
+    match version.as_u64() {
+        Some(v) if v > u64::from(VERSION) => return Err(FileError::Newer(v)),
+        Some(1..) => {}
+        _ => return Err(FileError::Version(quoted(&version.to_string()))),
+    }
+    for key in ["name", "note"] {
+        if value.get(key).is_some_and(|v| !v.is_string()) {
+            return Err(FileError::NotAText(key));
         }
     }
     let file: FileV1 = serde_json::from_value(value).map_err(|e| FileError::NotAFile(e.to_string()))?;
@@ -113,7 +155,10 @@ pub fn from_json(text: &str) -> Result<Design, FileError> {
     design.name = limited("name", file.name)?;
     design.note = limited("note", file.note)?;
     for (part, fields) in &file.parts {
-        let Value::Object(fields) = fields else { return Err(FileError::UnknownField(quoted(part))) };
+        if !PARTS.iter().any(|(p, _)| part_key(*p) == part) {
+            return Err(FileError::UnknownField(quoted(part)));
+        }
+        let Value::Object(fields) = fields else { return Err(FileError::NotAPart(quoted(part))) };
         for (name, value) in fields {
             let key = format!("{part}.{name}");
             let Some(f) = field(&key) else { return Err(FileError::UnknownField(quoted(&key))) };

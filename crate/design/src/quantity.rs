@@ -157,6 +157,28 @@ pub enum QuantityError {
         /// What was typed.
         text: String,
     },
+    /// More than one decimal sign of a kind.
+    #[error("“{text}” has more than one decimal sign; write one and no separators, e.g. 1234.5")]
+    ManySigns {
+        /// What was typed.
+        text: String,
+    },
+    /// One comma with three digits behind it: a decimal sign here, a separator there.
+    #[error("“{text}” may mean {decimal} or {thousands}; write one of these")]
+    Thousands {
+        /// What was typed.
+        text: String,
+        /// Read with a decimal comma.
+        decimal: String,
+        /// Read with a thousands separator.
+        thousands: String,
+    },
+    /// A gauge outside the table.
+    #[error("“{text}” is not a gauge known here; accepted is AWG 0 to AWG 40, or a section in mm²")]
+    Gauge {
+        /// What was typed.
+        text: String,
+    },
     /// A unit of another kind.
     #[error("{text} is {is}; accepted is {accepted}")]
     OtherKind {
@@ -260,11 +282,32 @@ fn plain(text: &str) -> Result<String, QuantityError> {
             c => c,
         })
         .collect();
-    let commas = cleaned.matches(',').count();
-    if commas > 1 || (commas == 1 && cleaned.contains('.')) {
+    let (commas, points) = (cleaned.matches(',').count(), cleaned.matches('.').count());
+    if commas > 0 && points > 0 {
         return Err(QuantityError::Ambiguous { text: quoted(text) });
     }
+    if commas > 1 || points > 1 {
+        return Err(QuantityError::ManySigns { text: quoted(text) });
+    }
+    if let Some((decimal, thousands)) = thousands(&cleaned) {
+        return Err(QuantityError::Thousands { text: quoted(text), decimal, thousands });
+    }
     Ok(cleaned.replace(',', "."))
+}
+
+/// Both readings of `2,800`; `None` where the comma can only be a decimal sign, as in `2,8` or `0,125`.
+fn thousands(cleaned: &str) -> Option<(String, String)> {
+    let (front, back) = cleaned.split_once(',')?;
+    let whole = front.trim_start_matches(['+', '-']);
+    let digits = back.bytes().take_while(u8::is_ascii_digit).count();
+    let grouped = (1..=3).contains(&whole.len())
+        && whole.bytes().all(|b| b.is_ascii_digit())
+        && !whole.starts_with('0')
+        && digits == 3;
+    grouped.then(|| {
+        let back = &back[..3];
+        (format!("{front}.{back}"), format!("{front}{back}"))
+    })
 }
 
 /// The value of a text in the base unit.
@@ -280,6 +323,9 @@ pub fn parse(text: &str, shown: &Shown) -> Result<f64, QuantityError> {
         && let Some(area) = awg_text(&cleaned)
     {
         return Ok(area);
+    }
+    if shown.unit == Unit::Section && cleaned.to_ascii_lowercase().contains("awg") {
+        return Err(QuantityError::Gauge { text: quoted(text) });
     }
     let Some((number, unit)) = split(&cleaned) else {
         return Err(QuantityError::NoNumber { text: quoted(text), accepted: accepted(shown) });
@@ -382,7 +428,9 @@ pub fn format(value: f64, shown: &Shown) -> String {
             return format!("{n}{unit}");
         }
     }
-    format!("{}{}{}", value, if base(shown.unit).is_empty() { "" } else { " " }, base(shown.unit))
+    // A bare ratio would be read in the field's own unit, which may be per cent.
+    let unit = if shown.unit == Unit::Ratio { "×" } else { base(shown.unit) };
+    if unit.is_empty() { value.to_string() } else { format!("{value} {unit}") }
 }
 
 fn base(unit: Unit) -> &'static str {
@@ -413,6 +461,8 @@ mod tests {
             ("3.3\u{a0}V", VOLT, 3.3),
             ("1e-3", VOLT, 1e-3),
             ("0,75mm2", SECTION, 0.75),
+            ("0,125", VOLT, 0.125),
+            ("1000,125", VOLT, 1000.125),
         ] {
             let got = parse(text, &shown).expect(text);
             assert!((got - want).abs() <= 1e-12 * want, "{text}: {got}");
@@ -432,6 +482,9 @@ mod tests {
         );
         assert_eq!(said("3.3 A", &VOLT), "3.3 A is a current; accepted is a voltage in V");
         assert!(said("1,234.5", &VOLT).contains("both comma and point"));
+        assert_eq!(said("2,800 mAh", &CAPACITY), "“2,800 mAh” may mean 2.800 or 2800; write one of these");
+        assert!(said("1.234.567", &VOLT).contains("more than one decimal sign"));
+        assert!(said("AWG 50", &SECTION).contains("AWG 0 to AWG 40"));
         assert!(said("much", &VOLT).contains("does not begin with a number"));
         assert!(said("", &VOLT).contains("nothing is entered"));
         assert!(said("1e999", &VOLT).contains("too large"));
