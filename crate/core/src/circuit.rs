@@ -24,7 +24,8 @@ pub(crate) struct Switch {
     pieces: Vec<(f64, f64, f64)>,
     hint: Hint<usize>,
     alpha: f64,
-    pairs: f64,
+    /// One over the number of pairs.
+    share: f64,
     pub(crate) shunt: f64,
     pub(crate) thermal_k_per_w: f64,
     pub(crate) thermal_time_s: f64,
@@ -46,7 +47,7 @@ impl Switch {
             pieces,
             hint,
             alpha: board.alpha_per_k,
-            pairs: f64::from(board.pairs),
+            share: 1.0 / f64::from(board.pairs),
             shunt: board.shunt.0,
             thermal_k_per_w: board.thermal_k_per_w,
             thermal_time_s: board.thermal_time.0,
@@ -55,12 +56,12 @@ impl Switch {
 
     /// What multiplies one pair's resistance at 25 °C.
     pub(crate) fn factor(&self, t: f64) -> f64 {
-        (1.0 + self.alpha * (t - 25.0)) / self.pairs
+        (1.0 + self.alpha * (t - 25.0)) * self.share
     }
 
     /// Change of `factor` per K.
     fn factor_slope(&self) -> f64 {
-        self.alpha / self.pairs
+        self.alpha * self.share
     }
 }
 
@@ -116,6 +117,8 @@ pub(crate) struct Circuit<'a> {
     pub(crate) stall_ohm: f64,
     /// The Arrhenius factors at the whole degree last asked for.
     anchor: Hint<Anchor>,
+    /// The pieces of the cell's four curves that were right last time.
+    pieces: [Hint<usize>; 4],
 }
 
 /// Both Arrhenius factors at a whole degree.
@@ -150,6 +153,7 @@ impl<'a> Circuit<'a> {
             load: &setup.load,
             stall_ohm: setup.load.stall.unwrap_or(setup.load.unlit).0,
             anchor: Hint::new(Anchor { degree: f64::NAN, inverse_kelvin: 0.0, r0: 1.0, branch: 1.0 }),
+            pieces: Default::default(),
         }
     }
 
@@ -180,9 +184,9 @@ impl<'a> Circuit<'a> {
 
     pub(crate) fn cell_now(&self, soc: f64, t: f64) -> CellNow {
         let cell = self.cell;
-        let (u, u_slope) = cell.ocv.at_with_slope(soc);
-        let (entropy, entropy_slope) = cell.entropy.at_with_slope(soc);
-        let (shape, shape_slope) = cell.r0_shape.at_with_slope(soc);
+        let (u, u_slope) = cell.ocv.at_near(soc, &self.pieces[0]);
+        let (entropy, entropy_slope) = cell.entropy.at_near(soc, &self.pieces[1]);
+        let (shape, shape_slope) = cell.r0_shape.at_near(soc, &self.pieces[2]);
         let kelvin = Celsius(t).kelvin();
         let (r0_factor, branch_factor) = self.arrhenius(t, 1.0 / kelvin);
         let base = cell.r0.0 * cell.growth / self.parallel * r0_factor;
@@ -193,7 +197,8 @@ impl<'a> Circuit<'a> {
             entropy,
             r0,
             r0_slope: (base * shape_slope, -r0 * cell.r0_activation / (GAS_CONSTANT * kelvin * kelvin)),
-            branch_factor: cell.branch_shape.at(soc) * cell.growth / self.parallel * branch_factor,
+            branch_factor: cell.branch_shape.at_near(soc, &self.pieces[3]).0 * cell.growth / self.parallel
+                * branch_factor,
         }
     }
 

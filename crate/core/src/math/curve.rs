@@ -54,6 +54,17 @@ fn check(x: &[f64], y: &[f64], min: usize) -> Result<(), CurveError> {
     }
 }
 
+/// As [`piece`], trying the piece that was right last time first.
+fn piece_near(xs: &[f64], x: f64, last: &core::cell::Cell<usize>) -> usize {
+    let k = last.get();
+    if k + 1 < xs.len() && xs[k] <= x && x < xs[k + 1] {
+        return k;
+    }
+    let k = piece(xs, x);
+    last.set(k);
+    k
+}
+
 /// Which piece of a curve holds `x`: the last knot at or below it, kept inside the pieces.
 fn piece(xs: &[f64], x: f64) -> usize {
     let above = xs.partition_point(|&knot| knot <= x);
@@ -134,6 +145,19 @@ impl Polyline {
         let s = self.segment(x);
         (s.y0 + s.slope * (x - s.x0), s.slope)
     }
+
+    /// As [`Polyline::at_with_slope`], for places that move little from call to call.
+    pub(crate) fn at_near(&self, x: f64, last: &core::cell::Cell<usize>) -> (f64, f64) {
+        let end = self.x.len() - 1;
+        if x < self.x[0] {
+            return (self.y[0], 0.0);
+        }
+        if x >= self.x[end] {
+            return (self.y[end], 0.0);
+        }
+        let k = piece_near(&self.x, x, last);
+        (self.y[k] + self.slope[k] * (x - self.x[k]), self.slope[k])
+    }
 }
 
 /// The monotone piecewise cubic of Fritsch and Carlson, constant outside its points.
@@ -196,6 +220,18 @@ impl Monotone {
             return (self.y[last], 0.0);
         }
         let k = piece(&self.x, x);
+        let c = self.cubic[k];
+        let d = x - self.x[k];
+        (c[0] + d * (c[1] + d * (c[2] + d * c[3])), c[1] + d * (2.0 * c[2] + 3.0 * d * c[3]))
+    }
+
+    /// As [`Monotone::at_with_slope`], for places that move little from call to call.
+    pub(crate) fn at_near(&self, x: f64, last: &core::cell::Cell<usize>) -> (f64, f64) {
+        let end = self.x.len() - 1;
+        if x < self.x[0] || x > self.x[end] {
+            return self.at_with_slope(x);
+        }
+        let k = piece_near(&self.x, x, last);
         let c = self.cubic[k];
         let d = x - self.x[k];
         (c[0] + d * (c[1] + d * (c[2] + d * c[3])), c[1] + d * (2.0 * c[2] + 3.0 * d * c[3]))
