@@ -637,3 +637,26 @@ fn usual_on_resistance(at_3_8: f64) -> Polyline {
     let y = [24.5, 22.0, 19.0, 18.0, 17.0].map(|r| r / 18.0 * at_3_8).to_vec();
     Polyline::new(x, y).expect("five rising places")
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn exact_weak_parts_take_the_unfavourable_end() {
+        let mut design = Design::default();
+        design.set("board.stage1", "120–180 mV");
+        design.set("board.delay1", "10 (20) ms");
+        design.set("board.pair", "50 (65) mΩ");
+        let checked = check(&design).expect("sound");
+        let stage = |setup: &Setup| setup.board.as_ref().expect("a board").stages[0].clone();
+        let (nominal, weak) = (stage(&checked.nominal), stage(&checked.weak));
+        let Threshold::Sense(least) = weak.threshold else { panic!("{weak:?}") };
+        // The delay has no least of its own: the field's usual 40 % below 10 ms.
+        assert!((least.0 - 0.12).abs() < 1e-12 && (weak.delay.0 - 6e-3).abs() < 1e-12, "{weak:?}");
+        assert_eq!(nominal.delay, Seconds(0.01));
+        let pair = |setup: &Setup| setup.board.as_ref().expect("a board").on_resistance.at(3.8);
+        let got = (pair(&checked.nominal), pair(&checked.weak));
+        assert!((got.0 - 0.05).abs() < 1e-12 && (got.1 - 0.065).abs() < 1e-12, "{got:?}");
+    }
+}

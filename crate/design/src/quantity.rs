@@ -197,6 +197,14 @@ pub enum QuantityError {
         /// What would be accepted.
         accepted: String,
     },
+    /// The figure in parentheses is the smaller one.
+    #[error(
+        "“{text}” has a most below its typical value; accepted is the larger in parentheses, e.g. 10 (20)"
+    )]
+    MostBelowTypical {
+        /// What was typed.
+        text: String,
+    },
     /// Not finite.
     #[error("{text} is too large a number")]
     TooLarge {
@@ -218,6 +226,8 @@ fn accepted(shown: &Shown) -> String {
     let noun = noun(shown.unit);
     match shown.unit {
         Unit::Section => "a section in mm² or AWG, e.g. 0.75 mm² or AWG 18".into(),
+        // A bare number is in the field's own unit, so 0.8 in a field of percent is 0.8 %.
+        Unit::Ratio if shown.text == "%" => "a percentage, e.g. 80 or 80 %".into(),
         Unit::Ratio => "a number or a percentage, e.g. 0.8 or 80 %".into(),
         Unit::Count => "a whole number, e.g. 2".into(),
         _ => format!("{noun} in {}", shown.text),
@@ -378,12 +388,15 @@ pub struct Toleranced {
     pub max: f64,
 }
 
-/// A value with its tolerance: `150 ± 30 mV`, `120…180 mV`, `10 ms ± 20 %`, or a value alone.
+/// A value with its tolerance: `150 ± 30 mV`, `120…180 mV`, `120–180 mV`, `10 ms ± 20 %`, `10 (20) ms`, or
+/// a value alone.
 ///
 /// - `usual`: the fraction either way where the text gives none.
 ///
+/// What stands in parentheses is the most, as data sheets print it; the least is then by `usual`.
+///
 /// # Errors
-/// As [`parse`], for either part.
+/// As [`parse`], for either part; a most below the typical value.
 pub fn parse_toleranced(text: &str, shown: &Shown, usual: f64) -> Result<Toleranced, QuantityError> {
     let text = text.replace("+/-", "±").replace("+-", "±").replace("...", "…");
     if let Some((value, tolerance)) = text.split_once('±') {
@@ -401,7 +414,22 @@ pub fn parse_toleranced(text: &str, shown: &Shown, usual: f64) -> Result<Toleran
         let typical = if bare { parse(&format!("{value} {unit}"), shown)? } else { parse(value, shown)? };
         return Ok(either_way(typical, parse(tolerance, shown)?.abs()));
     }
-    if let Some((low, high)) = text.split_once('…') {
+    if let Some((typical, rest)) = text.split_once('(')
+        && let Some((most, unit)) = rest.split_once(')')
+    {
+        // A unit behind the parentheses counts for both.
+        let unit = unit.trim();
+        let with_unit = |part: &str| -> Result<f64, QuantityError> {
+            let bare = split(&plain(part)?).is_some_and(|(_, own)| own.is_empty());
+            if bare { parse(&format!("{part} {unit}"), shown) } else { parse(part, shown) }
+        };
+        let (typical, most) = (with_unit(typical)?, with_unit(most)?);
+        if most < typical {
+            return Err(QuantityError::MostBelowTypical { text: quoted(&text) });
+        }
+        return Ok(Toleranced { typical, min: typical - typical.abs() * usual, max: most });
+    }
+    if let Some((low, high)) = text.split_once('…').or_else(|| dash(&text)) {
         let unit = plain(high)?;
         let unit = split(&unit).map_or("", |(_, unit)| unit);
         let bare = split(&plain(low)?).is_some_and(|(_, unit)| unit.is_empty());
@@ -411,6 +439,21 @@ pub fn parse_toleranced(text: &str, shown: &Shown, usual: f64) -> Result<Toleran
     }
     let typical = parse(&text, shown)?;
     Ok(either_way(typical, typical.abs() * usual))
+}
+
+/// The two ends of a range written with a dash; a minus sign is none: it leads a number or an exponent.
+fn dash(text: &str) -> Option<(&str, &str)> {
+    text.char_indices().find_map(|(at, c)| {
+        let (low, high) = (&text[..at], &text[at + c.len_utf8()..]);
+        let before = low.chars().next_back()?;
+        let parts = match c {
+            '–' => !low.trim().is_empty(),
+            '-' => before.is_alphanumeric() && high.starts_with(|c: char| c.is_ascii_digit()),
+            _ => false,
+        };
+        let exponent = matches!(before, 'e' | 'E');
+        (parts && !exponent).then_some((low, high))
+    })
 }
 
 fn either_way(typical: f64, by: f64) -> Toleranced {
@@ -492,12 +535,46 @@ mod tests {
 
     #[test]
     fn exact_tolerances() {
-        for text in ["150 ± 30 mV", "150 mV ± 30 mV", "150 +/- 30", "150 mV ± 20 %", "120…180 mV", "150"]
-        {
+        for text in [
+            "150 ± 30 mV",
+            "150 mV ± 30 mV",
+            "150 +/- 30",
+            "150 mV ± 20 %",
+            "120…180 mV",
+            "150",
+            "120–180 mV",
+            "120 – 180 mV",
+            "120-180mV",
+            "0,12–0,18 V",
+            "120 mV-180 mV",
+            "150 (180) mV",
+            "150 mV (180 mV)",
+        ] {
             let t = parse_toleranced(text, &MILLIVOLT, 0.2).expect(text);
             let near = |a: f64, b: f64| (a - b).abs() < 1e-12;
             assert!(near(t.typical, 0.15) && near(t.min, 0.12) && near(t.max, 0.18), "{text}: {t:?}");
         }
+    }
+
+    #[test]
+    fn exact_a_minus_sign_is_no_range() {
+        for (text, want) in [("-150 mV", -0.15), ("–150 mV", -0.15), ("1.5e-1 V", 0.15), ("1.5e–1 V", 0.15)]
+        {
+            let t = parse_toleranced(text, &MILLIVOLT, 0.0).expect(text);
+            assert!((t.typical - want).abs() < 1e-12 && t.min == t.max, "{text}: {t:?}");
+        }
+        let said =
+            parse_toleranced("20 (10) mV", &MILLIVOLT, 0.2).expect_err("most below typical").to_string();
+        assert!(said.contains("20 (10) mV") && said.contains("larger in parentheses"), "{said}");
+    }
+
+    /// A hint must itself be accepted: a bare 0.8 in a field of percent is 0.8 %, far from 80 %.
+    #[test]
+    fn exact_a_hint_for_percent_reads_as_it_says() {
+        let percent = Shown { unit: Unit::Ratio, text: "%", worth: 0.01 };
+        let said = parse("much", &percent).expect_err("no number").to_string();
+        assert!(said.contains("e.g. 80 or 80 %"), "{said}");
+        assert_eq!((parse("80", &percent), parse("80 %", &percent)), (Ok(0.8), Ok(0.8)));
     }
 
     #[test]
