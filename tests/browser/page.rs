@@ -2,114 +2,11 @@
 //!
 //! `cargo xtask test` serves the built page and tells its address in `STRIKELINE_PAGE`.
 
-use std::process::Child;
-use std::time::Duration;
-
-use fantoccini::{Client, ClientBuilder, Locator};
-use serde_json::{Value, json};
+use serde_json::json;
 use strikeline_design::check::check;
 use strikeline_design::design::Design;
 use strikeline_design::{file, link, report};
-
-struct Browser {
-    client: Client,
-    driver: Child,
-    address: String,
-}
-
-impl Browser {
-    async fn start() -> Self {
-        let address =
-            std::env::var("STRIKELINE_PAGE").expect("STRIKELINE_PAGE tells where the page is served");
-        let port = std::net::TcpListener::bind("127.0.0.1:0")
-            .and_then(|l| l.local_addr())
-            .expect("a free port")
-            .port();
-        let driver = std::process::Command::new("chromedriver")
-            .arg(format!("--port={port}"))
-            .stdout(std::process::Stdio::null())
-            .spawn()
-            .expect("chromedriver starts");
-        let profile = std::env::temp_dir().join(format!("strikeline-{}-{port}", std::process::id()));
-        let arguments = [
-            "--headless",
-            "--no-sandbox",
-            "--disable-gpu",
-            "--disable-quic",
-            "--no-first-run",
-            "--disable-background-networking",
-            "--disable-component-update",
-            "--disable-sync",
-            "--window-size=1400,1000",
-            &format!("--user-data-dir={}", profile.display()),
-        ];
-        let wanted = json!({
-            "goog:chromeOptions": { "args": arguments },
-            "goog:loggingPrefs": { "browser": "ALL" },
-        });
-        let Value::Object(wanted) = wanted else { unreachable!("an object was written above") };
-        let mut last = String::new();
-        for _ in 0..100 {
-            let mut builder = ClientBuilder::new(hyper_util::client::legacy::connect::HttpConnector::new());
-            match builder.capabilities(wanted.clone()).connect(&format!("http://127.0.0.1:{port}")).await {
-                Ok(client) => return Self { client, driver, address },
-                Err(error) => last = error.to_string(),
-            }
-            tokio::time::sleep(Duration::from_millis(100)).await;
-        }
-        panic!("no session with chromedriver: {last}");
-    }
-
-    async fn open(&self, fragment: &str) {
-        // Nothing kept from before, and a page that is loaded anew: a fragment alone would not do that.
-        self.client.goto(&self.address).await.expect("the page");
-        self.script("localStorage.clear()").await;
-        self.client.goto("about:blank").await.expect("a blank page");
-        self.client.goto(&format!("{}{fragment}", self.address)).await.expect("the page");
-        self.until("document.body.hasAttribute('data-chain-ms')").await;
-    }
-
-    async fn script(&self, text: &str) -> Value {
-        self.client.execute(text, vec![]).await.expect("the script runs")
-    }
-
-    async fn until(&self, condition: &str) {
-        for _ in 0..100 {
-            if self.script(&format!("return Boolean({condition})")).await == json!(true) {
-                return;
-            }
-            tokio::time::sleep(Duration::from_millis(50)).await;
-        }
-        panic!("never: {condition}");
-    }
-
-    async fn text(&self, css: &str) -> String {
-        let found = self.client.find(Locator::Css(css)).await.expect(css);
-        found.text().await.expect("its text")
-    }
-
-    async fn fill(&self, key: &str, text: &str) {
-        let id = format!("f-{}", key.replace('.', "-"));
-        let script = format!(
-            "const e = document.getElementById({id}); e.value = {text}; e.dispatchEvent(new Event('input', {{bubbles: true}}));",
-            id = json!(id),
-            text = json!(text)
-        );
-        self.script(&script).await;
-    }
-
-    async fn end(self) {
-        self.client.clone().close().await.ok();
-    }
-}
-
-impl Drop for Browser {
-    /// Also when a test fails: a driver left behind would keep the check waiting.
-    fn drop(&mut self) {
-        self.driver.kill().ok();
-        self.driver.wait().ok();
-    }
-}
+use strikeline_tests::browser::{Browser, Scheme};
 
 fn report_of(design: &Design) -> String {
     let checked = check(design).expect("sound");
@@ -217,17 +114,16 @@ async fn quick(browser: &Browser) {
 }
 
 async fn narrow(browser: &Browser) {
-    browser.client.set_window_size(500, 900).await.expect("a smaller window");
     browser.open("").await;
-    for width in [390, 320] {
-        let script = format!(
-            "document.documentElement.style.width='{width}px'; window.dispatchEvent(new Event('resize'));"
-        );
-        browser.script(&script).await;
-        let over = browser.script("return [...document.querySelectorAll('main, aside, header, .part, figure, svg')].filter(e => e.getBoundingClientRect().right > document.documentElement.getBoundingClientRect().right + 1).length").await;
-        assert_eq!(over, json!(0), "{width} px: something stands out");
+    for (width, scheme) in [(390, Scheme::Light), (320, Scheme::Dark), (1400, Scheme::Dark)] {
+        browser.view(width, 900).await;
+        browser.scheme(scheme).await;
+        let over = browser.script("return [...document.querySelectorAll('main, aside, header, .part, figure, svg')].filter(e => e.getBoundingClientRect().right > innerWidth + 1).map(e => e.tagName + '.' + (e.getAttribute('class') ?? ''))").await;
+        assert_eq!(over, json!([]), "{width} px: what stands out");
+        let wide = browser.script("return document.documentElement.scrollWidth").await;
+        assert_eq!(wide, json!(width), "{width} px: the page scrolls sideways");
     }
-    browser.client.set_window_size(1400, 1000).await.expect("the window");
+    browser.scheme(Scheme::Light).await;
 }
 
 async fn quiet(browser: &Browser) {
@@ -237,6 +133,10 @@ async fn quiet(browser: &Browser) {
         .script("return performance.getEntriesByType('resource').map(e => e.name).filter(n => !n.startsWith(location.origin) && !n.startsWith('data:'))")
         .await;
     assert_eq!(foreign, json!([]), "a request left the page's own address");
+    assert_eq!(browser.errors().await, Vec::<String>::new(), "the console showed errors in one of the parts");
+    // And the console is heard: what is written to it comes back.
+    browser.script("console.error('heard')").await;
+    assert_eq!(browser.errors().await.len(), 1);
 }
 
 #[test]
@@ -250,6 +150,5 @@ fn page_in_a_browser() {
         quick(&browser).await;
         narrow(&browser).await;
         quiet(&browser).await;
-        browser.end().await;
     });
 }

@@ -1,5 +1,7 @@
 //! Support for the reference tests.
 
+#[cfg(feature = "browser")]
+pub mod browser;
 pub mod case;
 pub mod derive;
 pub mod draw;

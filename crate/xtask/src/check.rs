@@ -124,40 +124,9 @@ pub fn shots(folder: &Path) -> Result<(), String> {
     let server = Server::bind(folder, 8090)?;
     let address = server.address();
     std::thread::spawn(move || server.serve());
-    let out = root().join("target/shots");
-    std::fs::create_dir_all(&out).map_err(|e| e.to_string())?;
-    let dark = "--blink-settings=preferredColorScheme=0";
-    for (name, size, more) in [
-        ("desktop-light", "1400,2600", None),
-        ("desktop-dark", "1400,2600", Some(dark)),
-        ("phone-light", "500,3600", None),
-        ("phone-dark", "500,3600", Some(dark)),
-    ] {
-        let picture = format!("--screenshot={}", out.join(format!("{name}.png")).display());
-        let mut command = chromium();
-        command.arg(format!("--window-size={size}")).arg(picture).args(more).arg(&address);
-        run(&mut command)?;
-    }
-    let print = format!("--print-to-pdf={}", out.join("print.pdf").display());
-    run(chromium().args([&print, "--no-pdf-header-footer", &address]))?;
-    say(&format!("pictures stand in {}", out.display()));
-    Ok(())
-}
-
-fn chromium() -> Command {
-    let mut command = Command::new("chromium");
-    let profile = std::env::temp_dir().join(format!("strikeline-shots-{}", std::process::id()));
-    command.arg(format!("--user-data-dir={}", profile.display())).args([
-        "--headless",
-        "--no-sandbox",
-        "--disable-gpu",
-        "--disable-quic",
-        "--no-first-run",
-        "--disable-background-networking",
-        "--disable-component-update",
-        "--disable-sync",
-        "--hide-scrollbars",
-        "--virtual-time-budget=4000",
-    ]);
-    command
+    say("taking the pictures");
+    let mut command = Command::new("cargo");
+    command.args(["run", "--locked", "-q", "-p", "strikeline-tests", "--features", "browser"]);
+    command.args(["--example", "shots", "--"]).arg(root().join("target/shots"));
+    run(command.env("STRIKELINE_PAGE", address))
 }

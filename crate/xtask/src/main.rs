@@ -68,9 +68,6 @@ pub fn cargo(arguments: &[&str]) -> Result<(), String> {
 /// Builds the page into dist/.
 fn build() -> Result<PathBuf, String> {
     let path = tools::bring()?;
-    // Trunk runs cargo without network, so what the page is made of is brought before.
-    say("fetching the crates the page is made of, where they are missing");
-    cargo(&["fetch", "--locked", "--quiet"])?;
     say("building the page (release)");
     run(Command::new("trunk")
         .args(["build", "--release", "--locked"])
