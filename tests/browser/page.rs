@@ -40,10 +40,10 @@ async fn whole_path(browser: &Browser) {
     browser.fill("leads.load_section", "AWG 18").await;
     assert_eq!(browser.text("#stale").await, "");
 
-    // Undo brings the text back.
+    // Undo takes back all that was typed into the field.
     browser.script("document.getElementById('undo').click()").await;
     let back = browser.script("return document.getElementById('f-leads-load_section').value").await;
-    assert_eq!(back, json!("0.75 m"));
+    assert_eq!(back, json!("0.75 mm²"));
 }
 
 async fn links(browser: &Browser) {

@@ -84,7 +84,7 @@ impl Reader<'_> {
                 max: t.max.clamp(min, max),
             }),
             Err(error) => {
-                let message = format!("{}: {error}, {}", field.label, range(&shown, min, max));
+                let message = format!("{error}, {}", range(&shown, min, max));
                 self.fault(key, message);
                 None
             }

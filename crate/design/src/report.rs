@@ -23,6 +23,8 @@ pub struct Answers {
     pub weak: ChargeReport,
     /// The first press of the nominal charge.
     pub press: PressReport,
+    /// A press of the nominal parts from half charge, rested.
+    pub half: PressReport,
     /// The verdict from both charges.
     pub verdict: Verdict,
 }
@@ -35,8 +37,10 @@ pub fn answer(checked: &Checked) -> Answers {
     let start = PressStart::relaxed(&checked.nominal, 1.0, usage.ambient);
     let options = PressOptions { samples: press::sample_times(usage.press), ..PressOptions::default() };
     let press = press::run(&checked.nominal, &start, &options);
+    let half = PressStart::relaxed(&checked.nominal, 0.5, usage.ambient);
+    let half = press::run(&checked.nominal, &half, &options);
     let verdict = verdict::judge(&charge, &weak);
-    Answers { charge, weak, press, verdict }
+    Answers { charge, weak, press, half, verdict }
 }
 
 /// What a report holds beside verdict and summaries.

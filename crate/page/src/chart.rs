@@ -43,8 +43,12 @@ pub struct Chart {
     pub lines: Vec<Line>,
     /// Levels across.
     pub levels: Vec<Level>,
-    /// Values outside are cut off.
-    pub limit: Option<(f64, f64)>,
+    /// Whether values are spaced by their logarithm; below the least they are cut off.
+    pub log_values: Option<f64>,
+    /// Whether the levels are named at the left; else at the right.
+    pub named_left: bool,
+    /// What happens where, written along the top.
+    pub marks: Vec<(f64, String)>,
 }
 
 /// Where a chart's frame stands, in px.
@@ -79,8 +83,14 @@ impl Chart {
         let values = values.chain(self.levels.iter().map(|l| l.value));
         let (mut low, mut high) =
             values.fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), v| (a.min(v), b.max(v)));
-        if let Some((least, most)) = self.limit {
-            (low, high) = (low.max(least), high.min(most));
+        if let Some(least) = self.log_values {
+            low = low.max(least);
+            high = high.max(2.0 * low);
+            return if low.is_finite() && high.is_finite() {
+                (low / 1.3, high * 1.3)
+            } else {
+                (least, 10.0 * least)
+            };
         }
         if !(low.is_finite() && high.is_finite()) {
             return (0.0, 1.0);
@@ -101,6 +111,49 @@ impl Chart {
             (x - first) / (last - first).max(1e-9)
         };
         LEFT + part.clamp(0.0, 1.0) * (width - LEFT - RIGHT)
+    }
+
+    /// Where a value stands, in px from the top.
+    fn height_of(&self, v: f64, frame: (f64, f64), top: f64, height: f64) -> f64 {
+        let (low, high) = frame;
+        let v = v.clamp(low, high);
+        let part = if self.log_values.is_some() {
+            let ln = strikeline_core::math::ln;
+            (ln(high) - ln(v)) / (ln(high) - ln(low))
+        } else {
+            (high - v) / (high - low)
+        };
+        top + part * (height - top - BOTTOM)
+    }
+
+    /// The values that the axis names.
+    fn value_ticks(&self, frame: (f64, f64)) -> Vec<(f64, String)> {
+        let (low, high) = frame;
+        if self.log_values.is_some() {
+            let mut out = Vec::new();
+            let mut decade = 1e-6;
+            while decade < high {
+                for step in [1.0, 3.0] {
+                    let v = step * decade;
+                    if v >= low && v <= high {
+                        let digits = if v < 0.095 {
+                            2
+                        } else if v < 0.95 {
+                            1
+                        } else {
+                            0
+                        };
+                        out.push((v, fixed(v, digits)));
+                    }
+                }
+                decade *= 10.0;
+            }
+            return out;
+        }
+        let steps = ticks(low, high, 5);
+        let step = if steps.len() > 1 { steps[1] - steps[0] } else { 1.0 };
+        let digits = if step < 0.099 { 2 } else { usize::from(step < 0.99) };
+        steps.into_iter().map(|v| (v, fixed(v, digits))).collect()
     }
 
     /// The index of the place nearest to a horizontal position, in px.
@@ -132,40 +185,33 @@ impl Chart {
 
     /// The chart, `width` by `height` px.
     pub fn svg(&self, width: f64, height: f64) -> String {
-        let (low, high) = self.range();
-        let y = |v: f64| TOP + (high - v) / (high - low) * (height - TOP - BOTTOM);
+        let frame = self.range();
+        let (low, high) = frame;
+        let marks = self.mark_rows(width);
+        let top = TOP + 16.0 * marks.iter().map(|m| m.2 + 1).max().unwrap_or(0) as f64;
+        let y = |v: f64| self.height_of(v, frame, top, height);
         let mut out = format!(
             "<svg class=\"chart\" id=\"{}\" width=\"{width}\" height=\"{height}\" viewBox=\"0 0 {width} {height}\" role=\"img\" tabindex=\"0\" aria-label=\"{}\">",
             self.id,
             crate::number::escaped(&self.summary)
         );
-        let steps = ticks(low, high, 5);
-        let digits = if steps.len() > 1 && (steps[1] - steps[0]) < 0.099 {
-            2
-        } else if steps.len() > 1 && steps[1] - steps[0] < 0.99 {
-            1
-        } else {
-            0
-        };
-        for step in &steps {
-            let at = fixed(y(*step), 1).replace('−', "-");
-            out += &format!("<path class=\"grid\" d=\"M{LEFT} {at}H{}\"/>", width - RIGHT);
+        for (v, text) in self.value_ticks(frame) {
+            let at = y(v);
+            out += &format!("<path class=\"grid\" d=\"M{LEFT} {at:.1}H{}\"/>", width - RIGHT);
             out += &format!(
-                "<text class=\"axis\" x=\"{}\" y=\"{at}\" dy=\"4\" text-anchor=\"end\">{}</text>",
-                LEFT - 6.0,
-                fixed(*step, digits)
+                "<text class=\"axis\" x=\"{}\" y=\"{at:.1}\" dy=\"4\" text-anchor=\"end\">{text}</text>",
+                LEFT - 6.0
             );
         }
+        let foot = height - BOTTOM + 16.0;
         out += &format!(
-            "<text class=\"axis\" x=\"{}\" y=\"{}\" text-anchor=\"end\">{}</text>",
+            "<text class=\"axis\" x=\"{}\" y=\"{foot}\" text-anchor=\"end\">{}</text>",
             LEFT - 6.0,
-            height - BOTTOM + 16.0,
             self.unit
         );
         for (x, text) in self.x_ticks(width) {
             out += &format!(
-                "<text class=\"axis\" x=\"{x:.1}\" y=\"{}\" text-anchor=\"middle\">{text}</text>",
-                height - BOTTOM + 16.0
+                "<text class=\"axis\" x=\"{x:.1}\" y=\"{foot}\" text-anchor=\"middle\">{text}</text>"
             );
         }
         out += &format!(
@@ -174,48 +220,121 @@ impl Chart {
             height - 6.0,
             self.x_label
         );
-        let mut taken: Vec<f64> = Vec::new();
-        for level in &self.levels {
-            if level.value < low || level.value > high {
-                continue;
-            }
+        for (x, text, row) in &marks {
+            let at = TOP + 16.0 * *row as f64 + 2.0;
+            out += &format!("<path class=\"mark\" d=\"M{x:.1} {:.1}V{}\"/>", at + 3.0, height - BOTTOM);
+            let (anchor, shift) = if *x > width - 90.0 { ("end", -3.0) } else { ("start", 3.0) };
+            out += &format!(
+                "<text class=\"markname\" x=\"{:.1}\" y=\"{at:.1}\" text-anchor=\"{anchor}\">{text}</text>",
+                x + shift
+            );
+        }
+        let mut levels: Vec<&Level> =
+            self.levels.iter().filter(|l| l.value >= low && l.value <= high).collect();
+        levels.sort_by(|a, b| b.value.total_cmp(&a.value));
+        let mut above = f64::NEG_INFINITY;
+        for level in levels {
             let at = y(level.value);
             out += &format!("<path class=\"level\" d=\"M{LEFT} {at:.1}H{}\"/>", width - RIGHT);
-            let text_at = free(&mut taken, at - 5.0);
+            // Close under another level the name goes below its own line.
+            let text_at = if at - above < 20.0 { at + 14.0 } else { at - 5.0 };
+            above = at;
+            let (x, anchor) =
+                if self.named_left { (LEFT + 4.0, "start") } else { (width - RIGHT - 2.0, "end") };
             out += &format!(
-                "<text class=\"levelname\" x=\"{}\" y=\"{text_at:.1}\">{}</text>",
-                LEFT + 4.0,
+                "<text class=\"levelname\" x=\"{x}\" y=\"{text_at:.1}\" text-anchor=\"{anchor}\">{}</text>",
                 level.name
             );
         }
-        let mut ends: Vec<f64> = Vec::new();
         for line in &self.lines {
             let mut path = String::new();
             let mut pen = 'M';
             for (x, v) in self.x.iter().zip(&line.values) {
                 if v.is_finite() {
-                    let at = y(v.clamp(low, high));
-                    path += &format!("{pen}{:.1} {at:.1}", self.place(*x, width));
+                    path += &format!("{pen}{:.1} {:.1}", self.place(*x, width), y(*v));
                     pen = 'L';
                 } else {
                     pen = 'M';
                 }
             }
             out += &format!("<path class=\"line {}\" d=\"{path}\"/>", line.class);
-            if let Some(last) = line.values.iter().rev().find(|v| v.is_finite()) {
-                let at = free(&mut ends, y(last.clamp(low, high)) - 6.0);
-                out += &format!(
-                    "<text class=\"name {}\" x=\"{}\" y=\"{at:.1}\" text-anchor=\"end\">{}</text>",
-                    line.class,
-                    width - RIGHT - 2.0,
-                    line.name
-                );
-            }
         }
+        out += &self.line_names(width, y);
         out += &format!(
-            "<path class=\"cursor\" d=\"M0 {TOP}V{}\" visibility=\"hidden\"/></svg>",
+            "<path class=\"cursor\" d=\"M0 {top}V{}\" visibility=\"hidden\"/></svg>",
             height - BOTTOM
         );
+        out
+    }
+
+    /// The lines' names, at a place where their lines are furthest apart: the first above its line, the
+    /// others below theirs.
+    fn line_names(&self, width: f64, y: impl Fn(f64) -> f64) -> String {
+        let n = self.x.len();
+        if n == 0 {
+            return String::new();
+        }
+        let heights = |k: usize| -> Vec<f64> {
+            self.lines
+                .iter()
+                .filter_map(|l| l.values.get(k).filter(|v| v.is_finite()).map(|v| y(*v)))
+                .collect()
+        };
+        let apart = |k: usize| {
+            let mut h = heights(k);
+            h.sort_by(f64::total_cmp);
+            let lines = h.windows(2).map(|w| w[1] - w[0]).fold(60.0, f64::min);
+            // A level's own name stands at its line.
+            let levels = self
+                .levels
+                .iter()
+                .flat_map(|l| h.iter().map(|at| (at - y(l.value)).abs()).collect::<Vec<_>>());
+            let gap = levels.fold(lines, f64::min);
+            // A name wants room at its side, all lines, and the middle rather than an end.
+            let x = self.place(self.x[k], width);
+            let inside = x > LEFT + 30.0 && x < width - RIGHT - 90.0;
+            if h.len() == self.lines.len() && inside { gap } else { -1.0 }
+        };
+        let best = (0..n).max_by(|a, b| apart(*a).total_cmp(&apart(*b))).unwrap_or(0);
+        let mut order: Vec<(f64, &Line)> = self
+            .lines
+            .iter()
+            .filter_map(|l| l.values.get(best).filter(|v| v.is_finite()).map(|v| (y(*v), l)))
+            .collect();
+        order.sort_by(|a, b| a.0.total_cmp(&b.0));
+        let x = self.place(self.x[best], width);
+        let mut taken = f64::NEG_INFINITY;
+        let mut out = String::new();
+        for (k, (at, line)) in order.iter().enumerate() {
+            let wanted = if k == 0 { at - 7.0 } else { at + 16.0 };
+            let text_at = wanted.max(taken + 14.0);
+            taken = text_at;
+            out += &format!(
+                "<text class=\"name {}\" x=\"{x:.1}\" y=\"{text_at:.1}\">{}</text>",
+                line.class, line.name
+            );
+        }
+        out
+    }
+
+    /// The marks with the row in which each one's name has room; those that would take a fourth are left out.
+    fn mark_rows(&self, width: f64) -> Vec<(f64, &str, usize)> {
+        let mut ends: Vec<f64> = Vec::new();
+        let mut out = Vec::new();
+        for (place, text) in &self.marks {
+            let x = self.place(*place, width);
+            let row = (0..ends.len()).find(|r| ends[*r] < x).unwrap_or(ends.len());
+            if row < 3 {
+                // Seven px a letter is what the type takes at most.
+                let end = x + 10.0 + 7.0 * text.chars().count() as f64;
+                if row == ends.len() {
+                    ends.push(end);
+                } else {
+                    ends[row] = end;
+                }
+                out.push((x, text.as_str(), row));
+            }
+        }
         out
     }
 
@@ -239,7 +358,7 @@ impl Chart {
             .enumerate()
             .filter(|(k, (t, _))| *t >= first * 0.999 && *t <= last * 1.001 && (wide || k % 2 == 1))
             .map(|(_, (t, text))| (self.place(t, width), text.to_string()))
-            .filter(|(x, _)| *x < width - RIGHT - 14.0)
+            .filter(|(x, _)| *x > LEFT + 18.0 && *x < width - RIGHT - 14.0)
             .collect();
         }
         ticks(first, last, if width > 520.0 { 8 } else { 4 })
@@ -247,19 +366,6 @@ impl Chart {
             .map(|t| (self.place(t, width), fixed(t, 0)))
             .collect()
     }
-}
-
-/// A height for a label near `wanted` that keeps clear of those taken.
-fn free(taken: &mut Vec<f64>, wanted: f64) -> f64 {
-    let mut at = wanted.max(TOP + 4.0);
-    for _ in 0..6 {
-        match taken.iter().find(|t| (**t - at).abs() < 14.0) {
-            Some(t) => at = t + 15.0,
-            None => break,
-        }
-    }
-    taken.push(at);
-    at
 }
 
 /// One row of the staircase.
@@ -285,16 +391,25 @@ pub fn staircase(
     summary: &str,
 ) -> String {
     const ROW: f64 = 30.0;
+    const AXIS: f64 = 18.0;
     let label = if width > 520.0 { 170.0 } else { 118.0 };
     let low = marks.iter().map(|m| m.1).fold(load, f64::min) - 0.06;
     let high = open_circuit + 0.02;
     let x = |v: f64| label + (v - low) / (high - low).max(1e-6) * (width - label - 66.0);
     let rows = stairs.len() + 2;
-    let height = ROW * rows as f64 + 26.0;
+    let height = ROW * rows as f64 + 26.0 + AXIS;
     let mut out = format!(
         "<svg class=\"chart stairs\" width=\"{width}\" height=\"{height}\" viewBox=\"0 0 {width} {height}\" role=\"img\" aria-label=\"{}\">",
         crate::number::escaped(summary)
     );
+    for v in ticks(low, high, if width > 520.0 { 7 } else { 3 }) {
+        out += &format!("<path class=\"grid\" d=\"M{:.1} {AXIS}V{}\"/>", x(v), height - 22.0);
+        out += &format!(
+            "<text class=\"axis\" x=\"{:.1}\" y=\"12\" text-anchor=\"middle\">{}</text>",
+            x(v),
+            crate::number::volts(v)
+        );
+    }
     for (k, (name, v)) in marks.iter().enumerate() {
         let anchor = if x(*v) > width - 120.0 {
             "end"
@@ -303,7 +418,7 @@ pub fn staircase(
         } else {
             "end"
         };
-        out += &format!("<path class=\"level\" d=\"M{:.1} 4V{}\"/>", x(*v), height - 22.0);
+        out += &format!("<path class=\"level\" d=\"M{:.1} {AXIS}V{}\"/>", x(*v), height - 22.0);
         let shift = if anchor == "start" { 3.0 } else { -3.0 };
         out += &format!(
             "<text class=\"levelname\" x=\"{:.1}\" y=\"{}\" text-anchor=\"{anchor}\">{name} {}</text>",
@@ -313,7 +428,7 @@ pub fn staircase(
         );
     }
     let mut row = |k: usize, name: &str, from: f64, to: f64, value: &str, class: &str| {
-        let top = ROW * k as f64 + 6.0;
+        let top = ROW * k as f64 + 6.0 + AXIS;
         let (a, b) = (x(to.min(from)), x(to.max(from)));
         out += &format!(
             "<text class=\"stairname\" x=\"0\" y=\"{}\">{}</text>",
@@ -365,7 +480,9 @@ mod tests {
                 unit: "V",
                 lines: vec![Line { name: "a".into(), class: "volt", values }],
                 levels: vec![],
-                limit: None,
+                log_values: None,
+                named_left: true,
+                marks: vec![(1.0, "lit".into())],
             };
             let svg = chart.svg(360.0, 200.0);
             assert!(!svg.contains("NaN") && !svg.contains("inf") && !svg.contains("<x>"), "{svg}");

@@ -1,7 +1,7 @@
 //! The right-hand side as markup: verdict, facts, staircase, one press, one charge.
 
-use strikeline_core::board::{SensePoint, Threshold};
-use strikeline_core::report::{Mode, PressReport};
+use strikeline_core::board::{SensePoint, Stage, Threshold};
+use strikeline_core::report::{EventKind, Mode, PressReport};
 use strikeline_core::setup::Setup;
 use strikeline_core::verdict::{self, Part};
 use strikeline_design::check::Checked;
@@ -32,22 +32,28 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
     let charts = vec![
         press_volts(setup, answers),
         press_amps(setup, answers),
+        press_sense(setup, answers),
         charge_volts(setup, answers),
         charge_amps(setup, answers),
     ];
-    let figure = |k: usize, title: &str, note: &str| {
-        let svg = charts[k].svg(pair, 250.0);
+    let figure = |k: usize, title: &str, note: &str, wide: f64| {
+        let svg = charts[k].svg(wide, if wide > pair { 290.0 } else { 260.0 });
         format!(
             "<figure><figcaption>{title}<span>{note}</span></figcaption>{svg}<p class=\"reading\" id=\"{}-reading\">Point at the chart, or focus it and use the arrow keys, to read values.</p></figure>",
             charts[k].id
         )
+    };
+    let sense = if charts[2].lines.is_empty() {
+        String::new()
+    } else {
+        figure(2, "What the board senses", &sense_note(setup), pair)
     };
     let press_note = "first press of a full cell; time from switch closing, each decade as wide as the last";
     let markup = format!(
         "<div class=\"verdict {tone}\"><h1 class=\"word\">{word}</h1><p class=\"sentence\">{sentence}</p><p class=\"decided\">{decided}</p>{warning}</div>\
          {facts}\
          <figure><figcaption>Where the voltage goes<span>{stairs_note}</span></figcaption>{stairs}</figure>\
-         <h2 id=\"one-press\">One press</h2><div class=\"two\">{f0}{f1}</div>{events}\
+         <h2 id=\"one-press\">One press</h2>{f0}<div class=\"two\">{f1}{sense}</div>{events}\
          <h2 id=\"one-charge\">One charge</h2><p>{charge_sentence}</p><div class=\"two\">{f2}{f3}</div>{energy}",
         tone = said.tone,
         word = said.word,
@@ -56,15 +62,21 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
         facts = facts(setup, answers),
         stairs_note = stairs_note(answers),
         stairs = stairs(setup, answers, inner),
-        f0 = figure(0, "Voltage", press_note),
-        f1 = figure(1, "Current", press_note),
+        f0 = figure(0, "Voltage", press_note, inner),
+        f1 = figure(1, "Current", "the same press; each step up is three times as much", pair),
         events = events(setup, &answers.press),
         charge_sentence = escaped(&charge_sentence(setup, answers)),
-        f2 = figure(2, "Voltage, press by press", "rested before each press, and at the load at its end"),
-        f3 = figure(
+        f2 = figure(
             3,
+            "Voltage, press by press",
+            "rested before each press, and at the load at its end",
+            pair
+        ),
+        f3 = figure(
+            4,
             "Draw against the board's trip",
-            "at the end of each press; the trip from the switch as warm and as hard driven as it is then"
+            "at the end of each press; the trip from the switch as warm and as hard driven as it is then",
+            pair
         ),
         energy = energy(answers),
     );
@@ -83,15 +95,15 @@ fn facts(setup: &Setup, answers: &Answers) -> String {
         Some(v) => format!("rested for hours; {} read between presses", volts(v.0)),
         None => "there is no full press to recharge after".into(),
     };
-    let (hold, hold_note) = match at_half(answers) {
+    let (spare, spare_note) = match at_strike(answers) {
         Some(v) => {
-            let spare = (v - setup.load.hold.0) * 1e3;
-            (
-                format!("{} mV", fixed(spare, 0)),
-                "over the hold voltage at the end of a press at half charge".to_string(),
-            )
+            let over = fixed((v - setup.load.strike.0) * 1e3, 0);
+            let held = lit_end(answers).map_or("the arc does not stay lit".into(), |v| {
+                format!("{} mV over the hold voltage when lit", fixed((v - setup.load.hold.0) * 1e3, 0))
+            });
+            (format!("{over} mV"), format!("before the arc lights, at half charge; {held}"))
         }
-        None => ("—".into(), "no press at half charge is lit to its end".into()),
+        None => ("—".into(), "it does not run at half charge".into()),
     };
     let (trip, trip_note) = match trip_margin(setup, answers) {
         Some((ratio, i, limit)) => (
@@ -112,17 +124,20 @@ fn facts(setup: &Setup, answers: &Answers) -> String {
             &format!("{weak} with weak parts; {} of arc time", time(charge.lit.0))
         ),
         fact("Recharge when a meter reads", &mark, &mark_note),
-        fact("Voltage to spare", &hold, &hold_note),
+        fact("Over the strike voltage", &spare, &spare_note),
         fact("Board's trip over draw", &trip, &trip_note),
     )
 }
 
-/// Voltage at the load at the end of the press nearest to half charge, if that is lit.
-fn at_half(answers: &Answers) -> Option<f64> {
-    let from_half = |p: &&strikeline_core::report::PressLine| (p.summary.soc_end - 0.5).abs();
-    let press = answers.charge.presses.iter().min_by(|a, b| from_half(a).total_cmp(&from_half(b)))?;
-    let near = from_half(&press) < 0.1 && press.summary.end_mode == Mode::Lit;
-    near.then_some(press.summary.load_end.0)
+/// Highest voltage at the load while it runs without an arc, in the press from half charge.
+fn at_strike(answers: &Answers) -> Option<f64> {
+    answers.half.trace.iter().filter(|s| s.mode == Mode::Unlit).map(|s| s.load.0).reduce(f64::max)
+}
+
+/// Voltage at the load at the end of the press from half charge, if it is lit then.
+fn lit_end(answers: &Answers) -> Option<f64> {
+    let summary = &answers.half.summary;
+    (summary.end_mode == Mode::Lit).then_some(summary.load_end.0)
 }
 
 /// The current above which the board's first stage trips when its pair has the resistance `pair`.
@@ -155,9 +170,9 @@ fn trip_margin(setup: &Setup, answers: &Answers) -> Option<(f64, f64, f64)> {
         .reduce(|a, b| if b.0 < a.0 { b } else { a })
 }
 
-/// The sample the staircase is drawn from: the last lit one of the first press, else the last.
+/// The sample the staircase is drawn from: the last lit one of the press from half charge, else its last.
 fn stairs_sample(answers: &Answers) -> Option<&strikeline_core::report::Sample> {
-    let trace = &answers.press.trace;
+    let trace = &answers.half.trace;
     trace.iter().rev().find(|s| s.mode == Mode::Lit).or(trace.last())
 }
 
@@ -165,7 +180,7 @@ fn stairs_note(answers: &Answers) -> String {
     stairs_sample(answers).map_or_else(String::new, |s| {
         let state = if s.mode == Mode::Lit { "lit" } else { "not lit" };
         format!(
-            "first press of a full cell, {} after closing, {state}, {}",
+            "half charge, rested before; {} after closing, {state}, {}",
             time(s.time.0),
             amps(s.current.0)
         )
@@ -219,7 +234,9 @@ fn press_chart(id: &'static str, answers: &Answers, unit: &'static str, summary:
         unit,
         lines: vec![],
         levels: vec![],
-        limit: None,
+        log_values: None,
+        named_left: true,
+        marks: vec![],
     }
 }
 
@@ -234,10 +251,35 @@ fn press_volts(setup: &Setup, answers: &Answers) -> Chart {
     let trace = answers.press.trace.iter().skip(1);
     chart.lines = vec![
         Line { name: "cell".into(), class: "soft", values: trace.clone().map(|s| s.cell.0).collect() },
+        Line { name: "board".into(), class: "amp", values: trace.clone().map(|s| s.board.0).collect() },
         Line { name: "load".into(), class: "volt", values: trace.map(|s| s.load.0).collect() },
     ];
     chart.levels = levels(setup);
+    chart.named_left = false;
+    chart.marks = happenings(answers);
     chart
+}
+
+/// What happens in the first press, for the top of its charts.
+fn happenings(answers: &Answers) -> Vec<(f64, String)> {
+    let mut out: Vec<(f64, String)> = Vec::new();
+    for e in &answers.press.events {
+        let text = match e.kind {
+            EventKind::StartReached => "runs",
+            EventKind::StrikeReached => "strike voltage",
+            EventKind::Lit => "lit",
+            EventKind::Drop => "drops",
+            EventKind::Stalls => "stalls",
+            EventKind::Opened(_) => "board opens",
+            EventKind::Released => "released",
+            _ => continue,
+        };
+        // The first of each kind: a flickering arc would fill the top.
+        if !out.iter().any(|(_, t)| t == text) {
+            out.push((e.time.0, text.into()));
+        }
+    }
+    out
 }
 
 fn press_amps(setup: &Setup, answers: &Answers) -> Chart {
@@ -257,7 +299,53 @@ fn press_amps(setup: &Setup, answers: &Answers) -> Chart {
     if let Some(trip) = trip_current(setup, summary.pair_end.0) {
         chart.levels.push(Level { name: format!("lowest trip, {}", amps(trip)), value: trip });
     }
+    chart.log_values = Some(0.03);
+    chart.named_left = false;
     chart
+}
+
+/// The sense voltage of the first press against each stage that has one.
+fn press_sense(setup: &Setup, answers: &Answers) -> Chart {
+    let stages: &[Stage] = setup.board_in_path().map_or(&[], |b| &b.stages);
+    let seen = stages.iter().position(|s| matches!(s.threshold, Threshold::Sense(_)));
+    let mut chart = press_chart(
+        "press-sense",
+        answers,
+        "mV",
+        "The sense voltage over the first press, against each stage.".into(),
+    );
+    if let Some(k) = seen {
+        let values = answers
+            .press
+            .trace
+            .iter()
+            .skip(1)
+            .map(|s| s.sense.get(k).copied().unwrap_or(f64::NAN) * 1e3)
+            .collect();
+        chart.lines = vec![Line { name: "sense".into(), class: "near", values }];
+        chart.levels = stages
+            .iter()
+            .filter_map(|s| match s.threshold {
+                Threshold::Sense(v) => Some(Level {
+                    name: format!("{} mV for {}", fixed(v.0 * 1e3, 0), time(s.delay.0)),
+                    value: v.0 * 1e3,
+                }),
+                Threshold::Current(_) => None,
+            })
+            .collect();
+    }
+    chart.log_values = Some(1.0);
+    chart.named_left = false;
+    chart
+}
+
+fn sense_note(setup: &Setup) -> String {
+    let over = match setup.board_in_path().map(|b| b.sense) {
+        Some(SensePoint::Shunt) => "over the shunt",
+        _ => "over the switch pair",
+    };
+    let peak = if setup.load.peak_factor > 1.0 { ", peaks of the draw included" } else { "" };
+    format!("{over}{peak}; it opens where it stays above a level for that level's delay")
 }
 
 fn charge_chart(id: &'static str, answers: &Answers, unit: &'static str, summary: String) -> Chart {
@@ -272,7 +360,9 @@ fn charge_chart(id: &'static str, answers: &Answers, unit: &'static str, summary
         unit,
         lines: vec![],
         levels: vec![],
-        limit: None,
+        log_values: None,
+        named_left: true,
+        marks: vec![],
     }
 }
 
@@ -288,6 +378,9 @@ fn charge_volts(setup: &Setup, answers: &Answers) -> Chart {
         Line { name: "load, lit".into(), class: "volt", values: presses.map(lit_end).collect() },
     ];
     chart.levels = levels(setup);
+    if let Some(mark) = answers.charge.recharge_mark {
+        chart.levels.push(Level { name: format!("recharge mark, {}", volts(mark.0)), value: mark.0 });
+    }
     chart
 }
 
@@ -323,7 +416,7 @@ fn events(setup: &Setup, press: &PressReport) -> String {
     let more = press.events.len().saturating_sub(SHOWN);
     let more = if more > 0 { format!("<p>and {more} more, the same again.</p>") } else { String::new() };
     format!(
-        "<details class=\"events\" open><summary>What happens, in order</summary><ol>{items}</ol>{more}</details>"
+        "<details class=\"events\" id=\"events\" open><summary>What happens, in order</summary><ol>{items}</ol>{more}</details>"
     )
 }
 

@@ -150,6 +150,13 @@ pub fn arrangement_warning(setup: &Setup) -> Option<&'static str> {
     }
 }
 
+/// The verdict in a line, for a narrow page.
+pub fn brief(said: &Said, answers: &Answers) -> String {
+    let mark =
+        answers.charge.recharge_mark.map_or(String::new(), |v| format!(" · recharge at {}", volts(v.0)));
+    format!("{} · {}{mark}", said.word, presses(answers.charge.full_presses))
+}
+
 /// What is said above a result that does not belong to what is entered; empty where it does.
 ///
 /// - `before`: whether there is an earlier result to show.

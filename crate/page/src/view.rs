@@ -20,6 +20,8 @@ use crate::{results, sentences};
 
 /// Where the last design is kept in the browser.
 const KEPT: &str = "strikeline.design";
+/// Where the last design without a fault is kept.
+const SOUND: &str = "strikeline.sound";
 /// How many steps back are kept.
 const MOST_STEPS: usize = 200;
 
@@ -31,8 +33,12 @@ struct Page {
     after: Vec<Design>,
     charts: Vec<Chart>,
     checked: Option<Checked>,
-    /// A link was opened: one's own kept design is left alone until something is changed.
+    /// A link was opened: one's own kept design is left alone; what is changed stands in the address.
     visiting: bool,
+    /// The field typed into last: one step back for all that is typed into it.
+    typing: Option<String>,
+    /// The first computation after opening: nothing has been changed yet, so nothing is written.
+    first: bool,
 }
 
 type Shared = Rc<RefCell<Page>>;
@@ -77,6 +83,8 @@ pub fn start() {
         charts: Vec::new(),
         checked: None,
         visiting: false,
+        typing: None,
+        first: false,
     };
     let shared = Rc::new(RefCell::new(page));
     shared.borrow_mut().open_first();
@@ -102,10 +110,20 @@ impl Page {
     /// A link's design, else the kept one, else the example.
     fn open_first(&mut self) {
         let fragment = self.window.location().hash().unwrap_or_default();
-        let kept = self.storage().and_then(|s| s.get_item(KEPT).ok().flatten());
-        if let Some(design) = kept.and_then(|text| file::from_json(&text).ok()) {
-            self.design = design;
+        match self.stored(KEPT) {
+            Some(Ok(design)) => self.design = design,
+            Some(Err(error)) => self.notice(&format!("The design kept in this browser cannot be read: {error}. It is left as it is until you change something.")),
+            None => {}
         }
+        // The last sound design gives the result to show while the kept one has faults.
+        if check::check(&self.design).is_err()
+            && let Some(Ok(sound)) = self.stored(SOUND)
+            && let Ok(checked) = check::check(&sound)
+        {
+            self.checked = Some(checked);
+            self.draw();
+        }
+        self.first = true;
         self.open_fragment(&fragment);
         self.show_form();
         self.compute();
@@ -122,7 +140,7 @@ impl Page {
                 self.before.push(std::mem::replace(&mut self.design, design));
                 self.after.clear();
                 self.visiting = true;
-                self.notice("Opened from a link. Your own last design is kept; Undo brings it back.");
+                self.notice("Opened from a link. Your own design stays kept in this browser; what you change here stands in the address, and Undo goes back.");
                 true
             }
             Err(link::LinkError::NotALink) => false,
@@ -131,6 +149,12 @@ impl Page {
                 false
             }
         }
+    }
+
+    /// A design kept in the browser.
+    fn stored(&self, key: &str) -> Option<Result<Design, file::FileError>> {
+        let text = self.storage().and_then(|s| s.get_item(key).ok().flatten())?;
+        Some(file::from_json(&text))
     }
 
     fn storage(&self) -> Option<web_sys::Storage> {
@@ -143,8 +167,14 @@ impl Page {
         if let Ok(history) = self.window.history() {
             history.replace_state_with_url(&JsValue::NULL, "", Some(&fragment)).ok();
         }
-        if self.visiting {
+        if self.visiting || self.first {
             return;
+        }
+        if check::check(&self.design).is_ok()
+            && let Some(storage) = self.storage()
+        {
+            // Where this fails the next line says so.
+            storage.set_item(SOUND, &file::to_json(&self.design)).ok();
         }
         let kept = self.storage().is_some_and(|s| s.set_item(KEPT, &file::to_json(&self.design)).is_ok());
         if let Some(note) = self.element("kept") {
@@ -189,6 +219,7 @@ impl Page {
             main.set_text_content(Some("There is no result yet."));
         }
         self.keep();
+        self.first = false;
         if let Some(clock) = clock {
             // Reading a size makes the browser lay the new page out before the clock is read.
             let height = self.document.body().map_or(0, |b| b.offset_height());
@@ -206,7 +237,17 @@ impl Page {
         let answers = report::answer(checked);
         let width = f64::from(main.client_width().max(260));
         let drawn = results::results(checked, &answers, width);
+        // What was folded stays folded.
+        let folded = self.element("events").is_some_and(|e| !e.has_attribute("open"));
         main.set_inner_html(&drawn.markup);
+        if folded && let Some(events) = self.element("events") {
+            events.remove_attribute("open").ok();
+        }
+        if let Some(brief) = self.element("brief") {
+            let said = sentences::verdict(&checked.nominal, &answers);
+            brief.set_text_content(Some(&sentences::brief(&said, &answers)));
+            brief.set_class_name(said.tone);
+        }
         self.charts = drawn.charts;
     }
 
@@ -246,14 +287,17 @@ impl Page {
             self.before.remove(0);
         }
         self.after.clear();
+        self.typing = None;
     }
 
     fn typed(&mut self, key: &str, text: &str) {
         if field(key).is_none() || self.design.get(key) == text {
             return;
         }
-        self.remember();
-        self.visiting = false;
+        if self.typing.as_deref() != Some(key) {
+            self.remember();
+            self.typing = Some(key.to_string());
+        }
         if !self.design.set(key, text) {
             self.notice("That text is too long to keep.");
         }
@@ -277,7 +321,7 @@ impl Page {
         } else {
             self.before.push(now);
         }
-        self.visiting = false;
+        self.typing = None;
         self.notice("");
         self.show_form();
         self.compute();
@@ -297,9 +341,21 @@ impl Page {
     fn copy_link(&self) {
         let href = self.window.location().href().unwrap_or_default();
         let clipboard = self.window.navigator().clipboard();
-        // Where the browser refuses, the link still stands in the address line.
-        let _ = clipboard.write_text(&href);
-        self.notice("The link is copied; it also stands in the address line. It holds the whole design and sends nothing anywhere.");
+        let say = |text: &'static str| {
+            let document = self.document.clone();
+            Closure::<dyn FnMut(JsValue)>::new(move |_| {
+                if let Some(notice) = document.get_element_by_id("notice") {
+                    notice.set_text_content(Some(text));
+                    notice.remove_attribute("hidden").ok();
+                }
+            })
+        };
+        let copied = say("The link is copied. It holds the whole design and sends nothing anywhere.");
+        let refused = say("This browser does not let the page copy; take the link from the address line.");
+        let _ = clipboard.write_text(&href).then2(&copied, &refused);
+        // They are called once, whenever the browser has decided.
+        copied.forget();
+        refused.forget();
     }
 
     /// The reading of a chart at a place: the cursor and the words under it.
@@ -367,7 +423,6 @@ fn listen(shared: &Shared) {
         on(&name, "input", shared, |page, event| {
             if let Some(text) = target(event).as_ref().and_then(text_of) {
                 page.remember();
-                page.visiting = false;
                 page.design.name = text.chars().take(200).collect();
                 page.keep();
             }
@@ -475,6 +530,16 @@ fn read_file(shared: &Shared, chosen: &web_sys::File) {
             }
         }
     });
+    let failed = Closure::<dyn FnMut(Event)>::new(|_| {
+        if let Some(notice) =
+            web_sys::window().and_then(|w| w.document()).and_then(|d| d.get_element_by_id("notice"))
+        {
+            notice.set_text_content(Some("The file could not be read. Your own design is unchanged."));
+            notice.remove_attribute("hidden").ok();
+        }
+    });
+    reader.set_onerror(Some(failed.as_ref().unchecked_ref()));
+    failed.forget();
     reader.set_onload(Some(closure.unchecked_ref()));
     // What is too large is refused by its size, before it is read.
     if chosen.size() > file::LARGEST as f64 {
