@@ -42,7 +42,9 @@ pub fn all() -> Result<(), String> {
         arguments.extend(strict);
         cargo(&arguments)
     });
-    step("unit, reference and documentation tests", &mut || cargo(&["test", "--locked", "--workspace"]));
+    step("unit, reference and documentation tests", &mut || {
+        cargo(&["test", "--locked", "--workspace", "--no-fail-fast"])
+    });
     step("documentation without warnings", &mut || {
         let mut command = Command::new("cargo");
         command.args(["doc", "--locked", "--workspace", "--no-deps", "--document-private-items"]);
