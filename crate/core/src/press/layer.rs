@@ -29,7 +29,7 @@ const NODES: [(f64, f64); 5] = [
 /// How near to an operating point a stretch goes, in V; the capacitor is slaved from there.
 const NEAR: f64 = 1e-6;
 /// How far the slow states may move the source within a stretch, in V.
-const STILL: f64 = 2.5e-5;
+const STILL: f64 = 6e-5;
 
 /// Where a stretch leads.
 #[derive(Clone, Copy)]
