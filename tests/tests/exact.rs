@@ -121,6 +121,29 @@ fn exact_constant_power_roots() {
 }
 
 #[test]
+fn exact_constant_power_collapses_with_the_cell() {
+    // U = 2.6 + 1.6·z behind 0.15 Ω: the last operating point of 12 W is at U² = 4·R·P, U = 2.683 V.
+    for (esr, capacitance) in [(0.0, 1e-6), (0.0, 1e-4), (0.05, 1e-5), (0.05, 1e-3)] {
+        let mut setup = constant(3.5, 0.15, LitDraw::Power(Watts(12.0)), 60.0);
+        setup.cell.ocv = Monotone::new(vec![0.0, 1.0], vec![2.6, 4.2]).expect("rises");
+        setup.cell.capacity = AmpHours(0.05);
+        setup.load.hold = Volts(1.0);
+        setup.load.start = Volts(0.5);
+        setup.load.strike = Volts(3.0);
+        setup.load.strike_time = Seconds(0.5);
+        setup.load.esr = Ohms(esr);
+        setup.load.capacitance = Farads(capacitance);
+        let report = flat::press(&setup, &[]);
+        let drop = report.events.iter().find(|e| e.kind == EventKind::Drop).expect("collapses");
+        assert_eq!(report.summary.not_full, Some(NotFull::NoOperatingPoint));
+        // Passing the point takes the capacitor a while: it drops a little later, never earlier.
+        let collapse = (4.0_f64 * 0.15 * 12.0).sqrt();
+        near(&format!("ESR {esr}, {capacitance} F"), 2.6 + 1.6 * drop.soc, collapse - 1e-3, 2e-3);
+        assert!(report.summary.steps < 20_000, "{} steps", report.summary.steps);
+    }
+}
+
+#[test]
 fn exact_table_and_resistance_operating_points() {
     // From 3.0 A at 3 V down to 2.4 A at 4 V: i = 4.8 − 0.6 v; behind 0.1 Ω from 4.0 V: v = 4 − 0.1 i.
     let table = Polyline::new(vec![3.0, 4.0], vec![3.0, 2.4]).expect("rises");

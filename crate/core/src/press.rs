@@ -134,7 +134,8 @@ impl Default for PressOptions {
 
 /// Follows one press from `start`.
 ///
-/// Samples do not change the steps, so the summary is the same to the last bit with and without.
+/// While samples are wanted in a fast stretch it is followed by steps instead of a quadrature: the summary is
+/// the same within what the solver allows, not to the last bit.
 pub fn run(setup: &Setup, start: &PressStart, options: &PressOptions) -> PressReport {
     let mut simulator = Simulator::new(setup, options.max_events);
     let mut recorder = Recorder { events: Vec::new(), trace: Vec::new(), wanted: &options.samples };
@@ -298,6 +299,8 @@ struct Tally {
     peak: f64,
     lowest_lit: Option<f64>,
     hottest: [f64; 3],
+    /// No step is short enough to go on; the press is not followed further, and says so.
+    lost: bool,
     steps: u32,
     events: u32,
 }
@@ -411,7 +414,7 @@ impl<'a> Simulator<'a> {
         let mut h = self.first_step(&now.point);
         let mut fresh = true;
         loop {
-            if now.tally.events >= self.max_events || u64::from(now.tally.steps) >= bound {
+            if now.tally.lost || now.tally.events >= self.max_events || u64::from(now.tally.steps) >= bound {
                 return PressEnd::EventLimit;
             }
             let (stop, what) = self.next_deadline(press);
@@ -483,11 +486,15 @@ impl<'a> Simulator<'a> {
         let step = self.step(&now.y, now.t, if whole { left } else { *h }, &now.point);
         now.tally.steps += 1;
         let size = error_size(&step, self.slaved);
+        if !size.is_finite() && step.h <= 1e-12 {
+            now.tally.lost = true;
+            return (false, None);
+        }
         if (size > 1.0 || !size.is_finite()) && step.h > 1e-12 {
             let shrink = if size.is_finite() { (0.9 / size.sqrt().sqrt()).clamp(0.1, 0.8) } else { 0.1 };
             *h = step.h * shrink;
-            if self.slaved && !size.is_finite() {
-                // The operating point vanishes inside this step.
+            if self.slaved && !size.is_finite() && step.h <= 20.0 * self.fast_time(&now.point) {
+                // The operating point vanishes inside a step that is short for the capacitor already.
                 self.free(now);
                 now.point = self.point(&now.y, now.t);
                 *h = self.first_step(&now.point);

@@ -125,7 +125,8 @@ impl Polyline {
     pub fn segment(&self, x: f64) -> Segment {
         let (xs, ys) = (&self.x, &self.y);
         let last = xs.len() - 1;
-        if x < xs[0] {
+        // What is not a number belongs to no piece; the first one answers with the same.
+        if x < xs[0] || x.is_nan() {
             return Segment { from: f64::NEG_INFINITY, to: xs[0], x0: xs[0], y0: ys[0], slope: 0.0 };
         }
         if x >= xs[last] {
@@ -297,6 +298,15 @@ mod tests {
         let p = Polyline::new(vec![1.0, 2.0, 4.0], vec![10.0, 20.0, 0.0]).expect("three points");
         let got: Vec<f64> = [0.0, 1.0, 1.5, 2.0, 3.0, 4.0, 9.0].iter().map(|&x| p.at(x)).collect();
         assert_eq!(got, [10.0, 10.0, 15.0, 20.0, 10.0, 0.0, 0.0]);
+    }
+
+    #[test]
+    fn exact_what_is_not_a_number_stays_so() {
+        assert!(Polyline::constant(1.0).at(f64::NAN).is_nan());
+        let p = Polyline::new(vec![0.0, 1.0], vec![0.0, 1.0]).expect("two points");
+        assert!(p.at(f64::NAN).is_nan());
+        let m = Monotone::new(vec![0.0, 1.0], vec![0.0, 1.0]).expect("two points");
+        assert!(m.at(f64::NAN).is_nan());
     }
 
     #[test]

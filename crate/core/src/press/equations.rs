@@ -108,8 +108,11 @@ impl Simulator<'_> {
             }
             held = at(held.v + by);
         }
-        // The point has vanished, which the caller sees by the number.
-        Held { v: f64::NAN, ..held }
+        // The point has vanished: with the current nothing in a step that meets this is a number, and the
+        // step is refused.
+        held.v = f64::NAN;
+        held.path.current = f64::NAN;
+        held
     }
 
     /// The rates, for a current that is a little larger.
