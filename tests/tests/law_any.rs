@@ -1,4 +1,4 @@
-//! Properties that hold for every design, over some thousands of drawn ones.
+//! Properties that hold for every design that the core accepts, sensible or not, over some thousands of drawn ones.
 //!
 //! The draws are the same in every run. A failure prints the seed of the design; `Draw::new(seed).setup(…)`
 //! brings it back.
@@ -103,8 +103,8 @@ fn charges(each: impl Fn(u64, &Setup, &ChargeReport, &mut Failures)) {
     failures.none();
 }
 
-/// Whether a design has neither a surge nor more than 50 µF: where the ledger closes today. The others
-/// should close as well.
+/// Whether a design has neither a surge nor more than 50 µF: where every ledger closes today. The others
+/// should close as well; a few end in the inrush after some µJ and are off by a few millionths of that.
 fn plain_input(setup: &Setup) -> bool {
     setup.load.surge.0 == 0.0 && setup.load.capacitance.0 <= 50e-6
 }
@@ -119,13 +119,13 @@ fn law_ledger_closes() {
             failures.check(seed, most <= 1e-6, || format!("residual {most:e}"));
         } else {
             // The right bound is 10⁻⁶ here too.
-            failures.check(seed, most <= 2e-4, || format!("residual {most:e}"));
+            failures.check(seed, most <= 1e-5, || format!("residual {most:e}"));
             open.set(open.get() + u32::from(most > 1e-6));
             worst.set(worst.get().max(most));
         }
     });
     println!("{} of {DESIGNS} designs above 1e-6, the worst {:e}", open.get(), worst.get());
-    assert!(open.get() <= 140, "{} designs above 1e-6; 0 would be right", open.get());
+    assert!(open.get() <= 16, "{} designs above 1e-6; 0 would be right", open.get());
 }
 
 #[test]

@@ -50,12 +50,13 @@ const SUMS: usize = 9;
 type Y = [f64; STATES];
 type Step = dormand_prince::Step<Point, STATES, SUMS>;
 
-/// What one step may be wrong by, per state: ten microvolts and what makes as much; a microvolt for the capacitor.
-const TOLERANCE: Y = [1e-6, 1e-5, 1e-5, 1e-5, 2e-3, 1e-2, 1e-2, 1e-6];
+/// What one step may be wrong by, per state: ten microvolts and what makes as much; for the
+/// capacitor, whose energy stands in the ledger of a press that ends in the inrush, half a microvolt.
+const TOLERANCE: Y = [1e-6, 1e-5, 1e-5, 1e-5, 2e-3, 1e-2, 1e-2, 5e-7];
 /// The capacitor is slaved once it is this close to the operating point, in V.
 const SLAVED_WITHIN: f64 = 1e-6;
-/// How far the solved voltage of a slaved capacitor may part from its integrated drift in a step, in V.
-const DRIFT_WITHIN: f64 = 5e-5;
+/// How far the charge of a slaved capacitor may part from its integrated current in a step, in A·s.
+const CHARGE_WITHIN: f64 = 5e-9;
 /// How finely an event is placed inside a step, as a fraction of it.
 const EVENT_WITHIN: f64 = 1e-8;
 /// Bound on steps per press: far more than a press with the largest number of events needs.
@@ -323,6 +324,8 @@ pub(crate) struct Simulator<'a> {
     max_events: u32,
     /// Step sizes that suited the slaved phases of the press before: unlit and lit.
     hints: [f64; 2],
+    /// How far a slaved voltage may part from its integrated drift in a step, in V.
+    drift_within: f64,
     // The press under way.
     mode: Mode,
     slaved: bool,
@@ -346,6 +349,7 @@ impl<'a> Simulator<'a> {
             watches: list,
             max_events,
             hints: [1e-3, 0.05],
+            drift_within: (CHARGE_WITHIN / setup.load.capacitance.0).clamp(1e-6, 5e-5),
             mode: Mode::Stalled,
             slaved: false,
             surge_from: None,
@@ -485,7 +489,7 @@ impl<'a> Simulator<'a> {
         let whole = *h >= left;
         let step = self.step(&now.y, now.t, if whole { left } else { *h }, &now.point);
         now.tally.steps += 1;
-        let size = error_size(&step, self.slaved);
+        let size = error_size(&step, self.slaved.then_some(self.drift_within));
         if !size.is_finite() && step.h <= 1e-12 {
             now.tally.lost = true;
             return (false, None);
@@ -493,8 +497,8 @@ impl<'a> Simulator<'a> {
         if (size > 1.0 || !size.is_finite()) && step.h > 1e-12 {
             let shrink = if size.is_finite() { (0.9 / size.sqrt().sqrt()).clamp(0.1, 0.8) } else { 0.1 };
             *h = step.h * shrink;
-            if self.slaved && !size.is_finite() && step.h <= 20.0 * self.fast_time(&now.point) {
-                // The operating point vanishes inside a step that is short for the capacitor already.
+            if self.slaved && step.h <= 20.0 * self.fast_time(&now.point) {
+                // The operating point vanishes, or runs away, inside a step that is short for the capacitor already.
                 self.free(now);
                 now.point = self.point(&now.y, now.t);
                 *h = self.first_step(&now.point);
@@ -622,11 +626,11 @@ impl<'a> Simulator<'a> {
 }
 
 /// Size of a step's error against what is allowed; not finite where a rate is not.
-fn error_size(step: &Step, slaved: bool) -> f64 {
-    let states = if slaved { CAP } else { STATES };
+fn error_size(step: &Step, slaved_within: Option<f64>) -> f64 {
+    let states = if slaved_within.is_some() { CAP } else { STATES };
     let parts = step.error.iter().zip(&TOLERANCE).take(states).map(|(error, allowed)| error.abs() / allowed);
     // A slaved voltage is solved for; its integrated drift must come to the same.
-    let solved = slaved.then(|| (step.to[CAP] - step.last.at.v).abs() / DRIFT_WITHIN);
+    let solved = slaved_within.map(|allowed| (step.to[CAP] - step.last.at.v).abs() / allowed);
     parts.chain(solved).fold(
         0.0,
         |size: f64, part| {

@@ -150,6 +150,9 @@ impl Polyline {
     /// As [`Polyline::at_with_slope`], for places that move little from call to call.
     pub(crate) fn at_near(&self, x: f64, last: &core::cell::Cell<usize>) -> (f64, f64) {
         let end = self.x.len() - 1;
+        if x.is_nan() {
+            return (x, 0.0);
+        }
         if x < self.x[0] {
             return (self.y[0], 0.0);
         }
@@ -302,7 +305,9 @@ mod tests {
 
     #[test]
     fn exact_what_is_not_a_number_stays_so() {
+        let last = core::cell::Cell::new(0);
         assert!(Polyline::constant(1.0).at(f64::NAN).is_nan());
+        assert!(Polyline::constant(1.0).at_near(f64::NAN, &last).0.is_nan());
         let p = Polyline::new(vec![0.0, 1.0], vec![0.0, 1.0]).expect("two points");
         assert!(p.at(f64::NAN).is_nan());
         let m = Monotone::new(vec![0.0, 1.0], vec![0.0, 1.0]).expect("two points");

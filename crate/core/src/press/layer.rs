@@ -12,8 +12,8 @@
 use crate::load::LitDraw;
 
 use super::{
-    BRANCH, CAP, CELL_T, CHARGE, Celsius, Crossing, Held, I2, MAX_BRANCHES, Mode, Moment, PAIR, SECOND,
-    SECOND_T, SUMS, SWITCH_T, Simulator, Z,
+    BRANCH, CAP, CELL_T, CHARGE, Celsius, Crossing, ESR, Held, I2, LOAD, MAX_BRANCHES, Mode, Moment, PAIR,
+    SECOND, SECOND_T, SUMS, SWITCH_T, Simulator, Z,
 };
 
 /// Nodes and weights of Gauss and Legendre's rule with five points on −1 to 1, exact to degree 9.
@@ -92,6 +92,7 @@ impl Simulator<'_> {
             Goal::Settled => {
                 self.slaved = true;
                 now.point = self.point(&now.y, now.t);
+                self.settle_charge(now, to);
                 // A load that the slow states move too fast for that is followed by steps.
                 self.change_regime(now);
             }
@@ -101,6 +102,23 @@ impl Simulator<'_> {
             }
         }
         true
+    }
+
+    /// Books the charge by which the capacitor follows the slow states to where they have moved the operating
+    /// point during the stretch: it flows through the path as the current does there, but not into the load.
+    fn settle_charge(&self, now: &mut Moment<'_, '_>, from: f64) {
+        let held = now.point.at;
+        if held.path.current <= 0.0 {
+            return;
+        }
+        let charge = self.setup.load.capacitance.0 * (held.v - from);
+        let time = charge / held.path.current;
+        let flow = now.point.flow_at(&held);
+        for (k, sum) in now.tally.sums.iter_mut().enumerate() {
+            if k != LOAD && k != ESR {
+                *sum += time * flow[k];
+            }
+        }
     }
 
     /// Where the capacitor is heading: the voltage, what is there, and the operating point if the way
@@ -298,7 +316,7 @@ impl Simulator<'_> {
                 let all = crate::math::ln((v_e - from) / (v_e - to));
                 let mut a = 0.0;
                 // The integrand goes to a constant as e^(−s): pieces grow with s.
-                for b in [2.0, 7.0, f64::INFINITY] {
+                for b in [1.5, 3.5, 7.0, f64::INFINITY] {
                     let b = all.min(b);
                     let (middle, half) = (0.5 * (a + b), 0.5 * (b - a));
                     for (x, weight) in NODES {
