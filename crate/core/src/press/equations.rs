@@ -5,6 +5,12 @@ use super::{
     SWITCH_T, Simulator, Step, Y, Z, dormand_prince, exp,
 };
 
+/// A surge below this many A is over: over its time constant it moves microvolts.
+const SURGE_OVER: f64 = 1e-5;
+/// How much of a surge's second-order lag is not in the drift. Path and load bend by a few percent over it; it is held against
+/// the solved voltage in every step.
+const SURGE_BEND: f64 = 0.1;
+
 impl Simulator<'_> {
     pub(super) fn factors(&self, y: &Y) -> (f64, f64) {
         let c = &self.circuit;
@@ -238,10 +244,14 @@ impl Simulator<'_> {
         // The operating point must move slowly against the capacitor's time constant: what is
         // neglected is τ² times its second derivative, about the drift over the shortest slow time.
         let mut slow_rate = self.circuit.branch_rate.iter().copied().fold(0.0, f64::max);
+        let mut part = 1.0;
         if self.surge_now(&point) {
             slow_rate = slow_rate.max(1.0 / load.surge_time.0);
+            // The lag behind a decaying surge is in the drift already; what is neglected is only how far path and
+            // load are from straight lines over it.
+            part = SURGE_BEND;
         }
-        let neglected = fast * fast * point.drift.abs() * slow_rate;
+        let neglected = part * fast * fast * point.drift.abs() * slow_rate;
         let follows = stiffness > 0.0 && neglected < SLAVED_WITHIN && fast * slow_rate < 0.05;
         if self.slaved {
             if follows {
@@ -261,7 +271,7 @@ impl Simulator<'_> {
 
     pub(super) fn surge_now(&self, point: &Point) -> bool {
         let (draw, _) = self.circuit.draw(self.mode, point.at.v);
-        point.at.draw - draw > 1e-9
+        point.at.draw - draw > SURGE_OVER
     }
 
     /// A first step after a change.
