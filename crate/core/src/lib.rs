@@ -11,6 +11,7 @@ pub mod driver;
 pub mod load;
 pub mod math;
 pub mod press;
+pub mod ratings;
 pub mod replay;
 pub mod report;
 pub mod setup;

@@ -97,6 +97,10 @@ quantity!(
     Joules, "J"
 );
 quantity!(
+    /// Charge, in C.
+    Coulombs, "C"
+);
+quantity!(
     /// Charge as capacity, in Ah.
     AmpHours, "Ah"
 );
