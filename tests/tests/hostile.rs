@@ -307,6 +307,11 @@ fn exact_hostile_files_are_refused_with_the_field() {
         (r#"{"strikeline": -1}"#, "strikeline"),
         (r#"{"strikeline": 99999999999999}"#, "version 99999999999999"),
         (r#"{"name": "no version"}"#, "strikeline"),
+        (r#"{"strikeline": [1]}"#, "strikeline"),
+        (r#"{"strikeline": 1, "cell": {"capacity": 1, "capacity": 1}}"#, "cell.capacity"),
+        (r#"{"strikeline": 1, "cell": {"capacity": {"a": 1, "a": 1}}}"#, "cell.capacity.a"),
+        (r#"{"strikeline": 1, "use": {}, "use": {}}"#, "use"),
+        (r#"{"strikeline": 1, "strikeline": 2}"#, "strikeline"),
     ] {
         let message = said(text);
         assert!(message.contains(names) && one_sentence(&message), "{text}: {message}");
@@ -320,10 +325,10 @@ fn exact_hostile_files_are_refused_with_the_field() {
 }
 
 /// A link whose checksum is right, whatever it holds.
-fn signed(plain: &[u8]) -> String {
+fn signed(version: u32, plain: &[u8]) -> String {
     let mut bytes = crc32fast::hash(plain).to_le_bytes().to_vec();
     bytes.extend(miniz_oxide::deflate::compress_to_vec(plain, 1));
-    format!("#1.{}", data_encoding::BASE64URL_NOPAD.encode(&bytes))
+    format!("#{version}.{}", data_encoding::BASE64URL_NOPAD.encode(&bytes))
 }
 
 #[test]
@@ -339,7 +344,7 @@ fn law_drawn_links() {
             0 => garbage(&mut rng),
             1 => format!("#{}.{}", rng.u8(0..3), garbage(&mut rng)),
             2 => altered(&mut rng, &sound),
-            _ => signed(altered(&mut rng, inner).as_bytes()),
+            _ => signed(rng.u32(1..=link::VERSION), altered(&mut rng, inner).as_bytes()),
         };
         match link::decode(&text) {
             Ok(design) => {
@@ -355,19 +360,55 @@ fn law_drawn_links() {
     assert!(refused > DRAWS / 2 && opened > 100, "{refused} refused, {opened} opened");
 }
 
-/// One link of every version, with what it has to hold, opens for ever.
+/// Stored links of every version, with the text of every field. They open to these for ever: the files are only
+/// added to, with the fields that a later version brings.
+const STORED: &[&str] = &[
+    include_str!("../data/links/1-changed.json"),
+    include_str!("../data/links/1-defaults.json"),
+    include_str!("../data/links/2-changed.json"),
+    include_str!("../data/links/2-defaults.json"),
+];
+
 #[test]
 fn golden_links_of_every_version_open() {
     let mut seen = Vec::new();
-    for line in include_str!("../data/links.txt").lines().filter(|l| !l.is_empty() && !l.starts_with("//")) {
-        let (link, held) = line.split_once(' ').expect("a link, a space, what it holds as a design file");
-        let held = file::from_json(held).expect("a design file");
-        assert_eq!(link::decode(link), Ok(held), "{link}");
+    for text in STORED {
+        let stored: serde_json::Value = serde_json::from_str(text).expect("a stored link");
+        let link = stored["link"].as_str().expect("a link");
+        let design = link::decode(link).expect(link);
+        assert_eq!(
+            (design.name.as_str(), design.note.as_str()),
+            (stored["name"].as_str().expect("a text"), stored["note"].as_str().expect("a text"),),
+            "{link}"
+        );
+        let fields = stored["fields"].as_object().expect("a text for every field");
+        for f in FIELDS {
+            let held = fields.get(f.key).and_then(|t| t.as_str());
+            assert_eq!(Some(design.get(f.key)), held, "{}: {link}", f.key);
+        }
+        assert_eq!(fields.len(), FIELDS.len(), "{link}");
         seen.push(link.split('.').next().expect("a version").trim_start_matches('#').to_string());
     }
     for version in 1..=link::VERSION {
         assert!(seen.contains(&version.to_string()), "no link of version {version}");
     }
+}
+
+/// A file of version 1 leaves out the same as a link of version 1.
+#[test]
+fn law_file_and_link_of_a_version_leave_out_the_same() {
+    for version in 1..=link::VERSION {
+        let plain = br#"{"n":"a","f":[["load.strike","3,35 V"]]}"#;
+        let linked = link::decode(&signed(version, plain)).expect("a link");
+        let file = format!(r#"{{"strikeline": {version}, "name": "a", "load": {{"strike": "3,35 V"}}}}"#);
+        assert_eq!(file::from_json(&file), Ok(linked), "version {version}");
+    }
+}
+
+#[test]
+fn exact_a_link_with_a_field_twice_is_damaged() {
+    let plain = br#"{"f":[["use.press","1 s"],["use.press","2 s"]]}"#;
+    assert_eq!(link::decode(&signed(2, plain)), Err(link::LinkError::Damaged));
 }
 
 /// A value anywhere in the field's range, often at its very ends.

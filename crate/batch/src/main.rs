@@ -12,12 +12,12 @@ use strikeline_design::{file, link};
 
 const USAGE: &str = "\
 strikeline-batch [--events] [--trace] [--presses] design.json …
-    one JSON report per design
+    one JSON report per design, a line each; what cannot be used is named on standard error
 strikeline-batch replay design.json log.csv [--soc X] [--temperature T] [--json]
     the design's cell under a recorded current (columns time_s, current_A; optional voltage_V, temperature_C)
 strikeline-batch link design.json
     the design's link, from # on
-strikeline-batch open '#1.…'
+strikeline-batch open '#2.…'
     the design file of a link
 strikeline-batch demo
     the worked example as a design file
@@ -26,39 +26,51 @@ strikeline-batch fields
 
 fn main() -> ExitCode {
     let arguments: Vec<String> = std::env::args().skip(1).collect();
-    match run(&arguments) {
-        Ok(text) => {
-            // A reader that has gone away is no fault of ours.
-            let _ = std::io::Write::write_all(&mut std::io::stdout(), text.as_bytes());
-            ExitCode::SUCCESS
-        }
-        Err(message) => {
-            eprintln!("{message}");
-            ExitCode::from(2)
-        }
+    let said = match run(&arguments) {
+        Ok(said) => said,
+        Err(message) => Said { out: String::new(), refused: vec![message] },
+    };
+    // A reader that has gone away is no fault of ours.
+    let _ = std::io::Write::write_all(&mut std::io::stdout(), said.out.as_bytes());
+    for message in &said.refused {
+        eprintln!("{message}");
+    }
+    if said.refused.is_empty() { ExitCode::SUCCESS } else { ExitCode::from(2) }
+}
+
+/// What a command has to say.
+struct Said {
+    /// For standard output.
+    out: String,
+    /// What could not be used, and why.
+    refused: Vec<String>,
+}
+
+impl From<String> for Said {
+    fn from(out: String) -> Self {
+        Self { out, refused: Vec::new() }
     }
 }
 
-fn run(arguments: &[String]) -> Result<String, String> {
+fn run(arguments: &[String]) -> Result<Said, String> {
     let words: Vec<&str> = arguments.iter().map(String::as_str).collect();
     match words.as_slice() {
         [] => Err(USAGE.into()),
-        ["--help" | "-h"] => Ok(USAGE.to_string() + "\n"),
-        ["demo"] => Ok(file::to_json(&Design::demo()) + "\n"),
-        ["fields"] => Ok(file::field_table()),
-        ["link", path] => Ok(link::encode(&design(path)?) + "\n"),
+        ["--help" | "-h"] => Ok((USAGE.to_string() + "\n").into()),
+        ["demo"] => Ok((file::to_json(&Design::demo()) + "\n").into()),
+        ["fields"] => Ok(file::field_table().into()),
+        ["link", path] => Ok((link::encode(&design(path)?) + "\n").into()),
         ["open", fragment] => {
             let design = link::decode(fragment).map_err(|e| e.to_string())?;
-            Ok(file::to_json(&design) + "\n")
+            Ok((file::to_json(&design) + "\n").into())
         }
-        ["replay", rest @ ..] => replay_command(rest),
+        ["replay", rest @ ..] => replay_command(rest).map(Said::from),
         _ => reports(&words),
     }
 }
 
-fn reports(words: &[&str]) -> Result<String, String> {
+fn reports(words: &[&str]) -> Result<Said, String> {
     let mut extras = Extras::default();
-    let mut out = String::new();
     let mut paths = Vec::new();
     for word in words {
         match *word {
@@ -72,14 +84,22 @@ fn reports(words: &[&str]) -> Result<String, String> {
     if paths.is_empty() {
         return Err(format!("no design file is given\n{USAGE}"));
     }
+    // A file that cannot be used takes nothing from the others.
+    let mut said = Said { out: String::new(), refused: Vec::new() };
     for path in paths {
-        let design = design(path)?;
-        let checked = checked(path, &design)?;
-        let answers = report::answer(&checked);
-        out += &report::json(&design.name, &checked, &answers, extras).to_string();
-        out.push('\n');
+        match report_of(path, extras) {
+            Ok(line) => said.out += &(line + "\n"),
+            Err(message) => said.refused.push(message),
+        }
     }
-    Ok(out)
+    Ok(said)
+}
+
+fn report_of(path: &str, extras: Extras) -> Result<String, String> {
+    let design = design(path)?;
+    let checked = checked(path, &design)?;
+    let answers = report::answer(&checked);
+    Ok(report::json(&design.name, &checked, &answers, extras).to_string())
 }
 
 fn read(path: &str) -> Result<String, String> {

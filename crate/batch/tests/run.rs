@@ -98,7 +98,8 @@ fn exact_what_is_wrong_is_said_with_2() {
         (r#"{"strikeline": 1, "cell": {"capasity": 1}}"#, "cell.capasity"),
         (r#"{"strikeline": 1, "cell": {"capacity": "3 V"}}"#, "cell.capacity"),
         (r#"{"strikeline": 1, "load": {"strike": 2, "hold": 3}}"#, "load.hold"),
-        (r#"{"strikeline": 2}"#, "version 2"),
+        (r#"{"strikeline": 3}"#, "version 3"),
+        (r#"{"strikeline": 2, "use": {"press": 1, "press": 2}}"#, "“use.press” stands twice"),
     ] {
         refused(&[&folder.file("bad.json", text)], words);
     }
@@ -110,6 +111,20 @@ fn exact_what_is_wrong_is_said_with_2() {
     refused(&["open", "#9.AAAA"], "version 9");
     std::fs::write(folder.0.join("bytes.json"), [0xff, 0xfe, 0x00]).expect("a file");
     refused(&[folder.0.join("bytes.json").to_str().expect("a plain path")], "bytes.json");
+}
+
+#[test]
+fn exact_a_bad_file_takes_nothing_from_the_others() {
+    let folder = Folder::new("some");
+    let short = folder.file("short.json", SHORT);
+    let bad = folder.file("bad.json", "{");
+    let faulty = folder.file("faulty.json", r#"{"strikeline": 2, "use": {"press": -1}}"#);
+    let alone = run(&[&short]);
+    let output = run(&[&bad, &short, &faulty, &short]);
+    let said = String::from_utf8_lossy(&output.stderr).into_owned();
+    assert_eq!(output.status.code(), Some(2), "{said}");
+    assert_eq!(stdout(&output), stdout(&alone).repeat(2));
+    assert!(said.contains("bad.json") && said.contains("faulty.json: use.press"), "{said}");
 }
 
 #[test]

@@ -1,18 +1,21 @@
 //! The design file: JSON, one entry per field, grouped by part.
 //!
 //! A value is a text as one would type it (`"45 mΩ"`) or a number in the field's own unit (`45`); a table
-//! is a text or a list of pairs. What a file leaves out stands at its default. A key that is not known
-//! is refused by name, so that a misspelt one is not silently ignored.
+//! is a text or a list of pairs. What a file leaves out stands at the default of the file's version. A key that
+//! is not known, or stands twice, is refused by name, so that nothing is silently ignored.
 
-use serde::{Deserialize, Serialize};
-use serde_json::{Map, Value};
+use std::collections::BTreeSet;
+use std::fmt;
+
+use serde::de::{Deserialize, Deserializer, MapAccess, SeqAccess, Visitor};
+use serde_json::{Map, Number, Value};
 
 use crate::catalogue::{FIELDS, Kind, PARTS, Part, field};
 use crate::design::{Design, LONGEST_TEXT};
 use crate::quantity::{self, quoted};
+use crate::versions::{self, Refused};
 
-/// The version that is written.
-pub const VERSION: u32 = 1;
+pub use crate::versions::VERSION;
 
 /// Largest file that is read, in bytes.
 pub const LARGEST: usize = 1_000_000;
@@ -41,6 +44,21 @@ pub enum FileError {
     /// A name that no field has.
     #[error("“{0}” is not a field of a design; the fields are listed in the documentation")]
     UnknownField(String),
+    /// A field that the file's version does not have.
+    #[error(
+        "{key} came with version {since} of the file, this one says {says}; change the entry \"strikeline\""
+    )]
+    LaterField {
+        /// The field.
+        key: String,
+        /// The version that brought it.
+        since: u32,
+        /// The version of the file.
+        says: u32,
+    },
+    /// A name that stands twice in the same braces.
+    #[error("“{0}” stands twice; accepted is once")]
+    Twice(String),
     /// A value of the wrong kind.
     #[error(
         "{key}: accepted is a text such as \"45 mΩ\", a number in the field's own unit, or a list of pairs for a table"
@@ -59,16 +77,79 @@ pub enum FileError {
     },
 }
 
-/// Version 1 of the file.
-#[derive(Debug, Serialize, Deserialize)]
-struct FileV1 {
-    strikeline: u32,
-    #[serde(default)]
-    name: String,
-    #[serde(default)]
-    note: String,
-    #[serde(flatten)]
-    parts: Map<String, Value>,
+/// JSON as it stands in the file, names that stand twice included.
+enum Node {
+    Object(Vec<(String, Node)>),
+    Array(Vec<Node>),
+    Leaf(Value),
+}
+
+impl<'de> Deserialize<'de> for Node {
+    fn deserialize<D: Deserializer<'de>>(deserializer: D) -> Result<Self, D::Error> {
+        struct Reader;
+        impl<'de> Visitor<'de> for Reader {
+            type Value = Node;
+            fn expecting(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+                f.write_str("a JSON value")
+            }
+            fn visit_unit<E>(self) -> Result<Node, E> {
+                Ok(Node::Leaf(Value::Null))
+            }
+            fn visit_bool<E>(self, value: bool) -> Result<Node, E> {
+                Ok(Node::Leaf(value.into()))
+            }
+            fn visit_i64<E>(self, value: i64) -> Result<Node, E> {
+                Ok(Node::Leaf(value.into()))
+            }
+            fn visit_u64<E>(self, value: u64) -> Result<Node, E> {
+                Ok(Node::Leaf(value.into()))
+            }
+            fn visit_f64<E>(self, value: f64) -> Result<Node, E> {
+                Ok(Node::Leaf(Number::from_f64(value).map_or(Value::Null, Value::Number)))
+            }
+            fn visit_str<E>(self, value: &str) -> Result<Node, E> {
+                Ok(Node::Leaf(value.into()))
+            }
+            fn visit_seq<A: SeqAccess<'de>>(self, mut rows: A) -> Result<Node, A::Error> {
+                let mut all = Vec::new();
+                while let Some(row) = rows.next_element()? {
+                    all.push(row);
+                }
+                Ok(Node::Array(all))
+            }
+            fn visit_map<A: MapAccess<'de>>(self, mut entries: A) -> Result<Node, A::Error> {
+                let mut all = Vec::new();
+                while let Some(entry) = entries.next_entry()? {
+                    all.push(entry);
+                }
+                Ok(Node::Object(all))
+            }
+        }
+        deserializer.deserialize_any(Reader)
+    }
+}
+
+impl Node {
+    /// The plain value; `path` is where it stands, for a name that stands twice.
+    fn once(self, path: &str) -> Result<Value, FileError> {
+        match self {
+            Self::Leaf(value) => Ok(value),
+            Self::Array(rows) => rows.into_iter().map(|row| row.once(path)).collect(),
+            Self::Object(entries) => {
+                let mut seen = BTreeSet::new();
+                let mut map = Map::new();
+                for (name, node) in entries {
+                    let path =
+                        if path.is_empty() { quoted(&name) } else { format!("{path}.{}", quoted(&name)) };
+                    if !seen.insert(name.clone()) {
+                        return Err(FileError::Twice(path));
+                    }
+                    map.insert(name, node.once(&path)?);
+                }
+                Ok(Value::Object(map))
+            }
+        }
+    }
 }
 
 fn part_key(part: Part) -> &'static str {
@@ -82,6 +163,16 @@ fn part_key(part: Part) -> &'static str {
     }
 }
 
+/// The newest version of the file.
+#[derive(serde::Serialize)]
+struct Written<'d> {
+    strikeline: u32,
+    name: &'d str,
+    note: &'d str,
+    #[serde(flatten)]
+    parts: Map<String, Value>,
+}
+
 /// The design as a file: every field, also those at their default.
 pub fn to_json(design: &Design) -> String {
     let mut parts = Map::new();
@@ -92,7 +183,7 @@ pub fn to_json(design: &Design) -> String {
             map.insert(name.into(), Value::String(design.get(f.key).into()));
         }
     }
-    let file = FileV1 { strikeline: VERSION, name: design.name.clone(), note: design.note.clone(), parts };
+    let file = Written { strikeline: VERSION, name: &design.name, note: &design.note, parts };
     serde_json::to_string_pretty(&file).unwrap_or_default()
 }
 
@@ -135,26 +226,33 @@ pub fn from_json(text: &str) -> Result<Design, FileError> {
         return Err(FileError::TooLarge(text.len()));
     }
     let text = text.trim_start_matches('\u{feff}');
+    let node: Node = serde_json::from_str(text).map_err(|e| FileError::NotAFile(e.to_string()))?;
     // The version first: a newer file may look different in everything else.
-    let value: Value = serde_json::from_str(text).map_err(|e| FileError::NotAFile(e.to_string()))?;
-    let Some(version) = value.get("strikeline") else {
-        return Err(FileError::NotAFile("the entry \"strikeline\" with its version is missing".into()));
+    let Node::Object(entries) = &node else {
+        return Err(FileError::NotAFile("accepted is a group of parts in braces".into()));
     };
-    match version.as_u64() {
-        Some(v) if v > u64::from(VERSION) => return Err(FileError::Newer(v)),
-        Some(1..) => {}
-        _ => return Err(FileError::Version(quoted(&version.to_string()))),
-    }
-    for key in ["name", "note"] {
-        if value.get(key).is_some_and(|v| !v.is_string()) {
-            return Err(FileError::NotAText(key));
+    let version = match entries.iter().find(|(name, _)| name == "strikeline") {
+        Some((_, Node::Leaf(version))) => version.clone(),
+        Some((_, Node::Object(_) | Node::Array(_))) => {
+            return Err(FileError::Version("a group or list".into()));
         }
-    }
-    let file: FileV1 = serde_json::from_value(value).map_err(|e| FileError::NotAFile(e.to_string()))?;
-    let mut design = Design::default();
-    design.name = limited("name", file.name)?;
-    design.note = limited("note", file.note)?;
-    for (part, fields) in &file.parts {
+        None => {
+            return Err(FileError::NotAFile("the entry \"strikeline\" with its version is missing".into()));
+        }
+    };
+    let version = match version.as_u64().map(|v| (v, u32::try_from(v))) {
+        Some((_, Ok(v))) if (1..=VERSION).contains(&v) => v,
+        Some((v, _)) if v > u64::from(VERSION) => return Err(FileError::Newer(v)),
+        _ => return Err(FileError::Version(quoted(&version.to_string()))),
+    };
+    let Value::Object(mut parts) = node.once("")? else {
+        return Err(FileError::NotAFile("accepted is a group of parts in braces".into()));
+    };
+    parts.remove("strikeline");
+    let name = text_entry(&mut parts, "name")?;
+    let note = text_entry(&mut parts, "note")?;
+    let mut texts = Vec::new();
+    for (part, fields) in &parts {
         if !PARTS.iter().any(|(p, _)| part_key(*p) == part) {
             return Err(FileError::UnknownField(quoted(part)));
         }
@@ -170,18 +268,27 @@ pub fn from_json(text: &str) -> Result<Design, FileError> {
                 }
                 _ => return Err(FileError::WrongKind { key }),
             };
-            let text = limited(&key, text)?;
-            design.set(f.key, &text);
+            texts.push((key, text));
         }
     }
+    let mut design = versions::open(version, texts).map_err(|refused| match refused {
+        Refused::Unknown(key) => FileError::UnknownField(quoted(&key)),
+        Refused::Later { key, since } => FileError::LaterField { key, since, says: version },
+        Refused::Twice(key) => FileError::Twice(key),
+        Refused::TooLong { key, got } => FileError::TooLong { key, got },
+    })?;
+    (design.name, design.note) = (name, note);
     Ok(design)
 }
 
-fn limited(key: &str, text: String) -> Result<String, FileError> {
-    if text.len() > LONGEST_TEXT {
-        return Err(FileError::TooLong { key: key.into(), got: text.len() });
+/// Takes a text out of the entries beside the parts; empty where there is none.
+fn text_entry(parts: &mut Map<String, Value>, key: &'static str) -> Result<String, FileError> {
+    match parts.remove(key) {
+        None => Ok(String::new()),
+        Some(Value::String(text)) if text.len() <= LONGEST_TEXT => Ok(text),
+        Some(Value::String(text)) => Err(FileError::TooLong { key: key.into(), got: text.len() }),
+        Some(_) => Err(FileError::NotAText(key)),
     }
-    Ok(text)
 }
 
 fn rows_text(rows: &[Value]) -> Option<String> {
@@ -221,6 +328,14 @@ mod tests {
         assert!(said(r#"{"strikeline": 1, "cell": {"capasity": 1}}"#).contains("cell.capasity"));
         assert!(said(r#"{"strikeline": 9}"#).contains("version 9"));
         assert!(said(r#"{"strikeline": 1, "cell": {"capacity": [1]}}"#).contains("cell.capacity"));
+        assert!(
+            said(r#"{"strikeline": 1, "cell": {"capacity": 1, "capacity": 2}}"#)
+                .contains("“cell.capacity” stands twice")
+        );
+        assert!(said(r#"{"strikeline": 1, "cell": {}, "cell": {}}"#).contains("“cell” stands twice"));
+        assert!(
+            said(r#"{"strikeline": 1, "name": "a", "strikeline": 1}"#).contains("“strikeline” stands twice")
+        );
         assert!(said("{").starts_with("this is not a design file"));
         assert!(said(&"[".repeat(100_000)).starts_with("this is not a design file"));
     }

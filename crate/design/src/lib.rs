@@ -10,3 +10,4 @@ pub mod link;
 pub mod quantity;
 pub mod report;
 pub mod shipped;
+pub mod versions;

@@ -1,15 +1,15 @@
 //! The share link: the whole design in the fragment of the address, so that nothing is sent anywhere.
 //!
-//! `#1.` and then, in the web's base-64 alphabet, a checksum and the compressed design. Only what differs
-//! from the default stands in it. Texts go as they were typed, so the numbers are the same to the last bit.
+//! `#2.` (the version) and then, in the web's base-64 alphabet, a checksum and the compressed design. Only what
+//! differs from the defaults of its version stands in it; see [`crate::versions`]. Texts go as they were typed, so
+//! the numbers are the same to the last bit.
 
 use serde::{Deserialize, Serialize};
 
-use crate::catalogue::field;
 use crate::design::{Design, LONGEST_TEXT};
+use crate::versions::{self, Refused};
 
-/// The version that is written.
-pub const VERSION: u32 = 1;
+pub use crate::versions::VERSION;
 
 /// Longest fragment that is read, in characters.
 pub const LONGEST: usize = 64_000;
@@ -33,10 +33,11 @@ pub enum LinkError {
     TooLarge,
 }
 
-/// Version 1: name, note, and the fields that differ from the default, by key.
+/// Versions 1 and 2, which differ in their fields and defaults only: name, note, and the fields that differ from
+/// the default, by key.
 #[derive(Debug, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
-struct LinkV1 {
+struct Link {
     #[serde(rename = "n", default, skip_serializing_if = "String::is_empty")]
     name: String,
     #[serde(rename = "t", default, skip_serializing_if = "String::is_empty")]
@@ -47,7 +48,7 @@ struct LinkV1 {
 
 /// The fragment of a design, from `#` on.
 pub fn encode(design: &Design) -> String {
-    let link = LinkV1 {
+    let link = Link {
         name: design.name.clone(),
         note: design.note.clone(),
         fields: design.changed().map(|(f, text)| (f.key.to_string(), text.to_string())).collect(),
@@ -90,21 +91,15 @@ pub fn decode(fragment: &str) -> Result<Design, LinkError> {
     if crc32fast::hash(&plain).to_le_bytes() != *sum {
         return Err(LinkError::Damaged);
     }
-    let link: LinkV1 = serde_json::from_slice(&plain).map_err(|_| LinkError::Damaged)?;
-    // A version-1 link has what differs from the default; what it leaves out stands there.
-    let mut design = Design::default();
+    let link: Link = serde_json::from_slice(&plain).map_err(|_| LinkError::Damaged)?;
     if link.name.len() > LONGEST_TEXT || link.note.len() > LONGEST_TEXT {
         return Err(LinkError::TooLarge);
     }
+    let mut design = versions::open(version, link.fields).map_err(|refused| match refused {
+        Refused::TooLong { .. } => LinkError::TooLarge,
+        Refused::Unknown(_) | Refused::Later { .. } | Refused::Twice(_) => LinkError::Damaged,
+    })?;
     (design.name, design.note) = (link.name, link.note);
-    for (key, text) in link.fields {
-        if field(&key).is_none() {
-            return Err(LinkError::Damaged);
-        }
-        if !design.set(&key, &text) {
-            return Err(LinkError::TooLarge);
-        }
-    }
     Ok(design)
 }
 

@@ -1,0 +1,247 @@
+//! What a stored design leaves out, version by version.
+//!
+//! A link holds only what differs from the defaults, and a file may leave out what it likes. Were that filled in
+//! from today's defaults, another default would change every old design without a word. So each version's
+//! fields and defaults stand here and never change again. Another default or a new field is a new step at the
+//! end; a stored design goes through every step from its own version on. A test holds the newest version and the
+//! catalogue together.
+
+use std::collections::BTreeMap;
+
+use crate::design::{Design, LONGEST_TEXT};
+
+/// The version that is written, of links and of files.
+pub const VERSION: u32 = 2;
+
+/// Fields and defaults of version 1.
+const FIRST: &[(&str, &str)] = &[
+    ("cell.chemistry", "lco_pouch"),
+    ("cell.capacity", "1.1 Ah"),
+    ("cell.route", "typical"),
+    ("cell.r_10s", ""),
+    ("cell.sag_rested", ""),
+    ("cell.sag_loaded", ""),
+    ("cell.sag_current", ""),
+    ("cell.sag_time", "10 s"),
+    ("cell.continuous", ""),
+    ("cell.parallel", "1"),
+    ("cell.health", "100 %"),
+    ("cell.growth", "1"),
+    ("cell.tolerance", "25 %"),
+    ("cell.r0", ""),
+    ("cell.r1", ""),
+    ("cell.tau1", "1.5 s"),
+    ("cell.r2", ""),
+    ("cell.tau2", "30 s"),
+    ("cell.r3", ""),
+    ("cell.tau3", "250 s"),
+    ("cell.ocv", ""),
+    ("cell.entropy", ""),
+    ("cell.r0_shape", ""),
+    ("cell.branch_shape", ""),
+    ("cell.r0_activation", ""),
+    ("cell.branch_activation", ""),
+    ("cell.heat", ""),
+    ("cell.cooling", ""),
+    ("board.arrangement", "through_board"),
+    ("board.stage1", "150 ± 30 mV"),
+    ("board.delay1", "10 ± 4 ms"),
+    ("board.pair", "50 ± 10 mΩ"),
+    ("board.pairs", "1"),
+    ("board.stage2", ""),
+    ("board.delay2", "2.2 ms"),
+    ("board.stage3", "1 V"),
+    ("board.delay3", "0.3 ms"),
+    ("board.limit4", ""),
+    ("board.delay4", "10 ms"),
+    ("board.od", "2.4 ± 0.1 V"),
+    ("board.od_delay", "40 ms"),
+    ("board.release", "load_removed"),
+    ("board.retry", "1 s"),
+    ("board.sense", "pair"),
+    ("board.shunt", "0 mΩ"),
+    ("board.on", ""),
+    ("board.alpha", "0.4 %/K"),
+    ("board.thermal", "60 K/W"),
+    ("board.thermal_time", "8 s"),
+    ("board.supply", "5 µA"),
+    ("leads.cell_length", "0.05 m"),
+    ("leads.cell_section", "0.75 mm²"),
+    ("leads.load_length", "0.1 m"),
+    ("leads.load_section", "0.75 mm²"),
+    ("leads.conductor", "flexible"),
+    ("leads.temperature", "20 °C"),
+    ("leads.cell_joints", "4 mΩ"),
+    ("leads.load_joints", "4 mΩ"),
+    ("leads.switch", "10 mΩ"),
+    ("load.law", "table"),
+    ("load.table", "3.0 2.45\n3.3 2.55\n3.6 2.65\n3.9 2.72\n4.2 2.78"),
+    ("load.current", "2.5 A"),
+    ("load.power", "9 W"),
+    ("load.resistance", "1.4 Ω"),
+    ("load.strike", "3.3 V"),
+    ("load.hold", "3 V"),
+    ("load.start", "2.4 V"),
+    ("load.strike_time", "2 ms"),
+    ("load.unlit", "8 Ω"),
+    ("load.stall", ""),
+    ("load.surge", "0 A"),
+    ("load.surge_time", "1 ms"),
+    ("load.capacitance", "100 µF"),
+    ("load.esr", "0 mΩ"),
+    ("load.peak", "1"),
+    ("use.press", "4 s"),
+    ("use.rest", "8 s"),
+    ("use.ambient", "20 °C"),
+    ("use.presses", "5000"),
+    ("second.fitted", "no"),
+    ("second.stage1", "150 ± 30 mV"),
+    ("second.delay1", "10 ± 4 ms"),
+    ("second.pair", "40 ± 8 mΩ"),
+    ("second.pairs", "1"),
+    ("second.od", "2.8 ± 0.1 V"),
+    ("second.od_delay", "100 ms"),
+];
+
+/// A field that the version before did not have.
+struct Added {
+    key: &'static str,
+    /// Its default in the version that brought it.
+    default: &'static str,
+    /// What an older design is given: what leaves it as it was when there was no such field.
+    before: &'static str,
+}
+
+/// From one version to the next.
+struct Step {
+    added: &'static [Added],
+    /// Fields with another default from here on; an older design keeps the older one.
+    changed: &'static [(&'static str, &'static str)],
+}
+
+const STEPS: [Step; VERSION as usize - 1] = [Step { added: SECOND, changed: &[] }];
+
+/// What version 2 brought.
+const SECOND: &[Added] = &[];
+
+/// Why the entries of a stored design are refused.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum Refused {
+    /// No version has such a field.
+    Unknown(String),
+    /// A later version than the stored one brought it.
+    Later {
+        /// The field.
+        key: String,
+        /// The version that brought it.
+        since: u32,
+    },
+    /// A field stands twice.
+    Twice(String),
+    /// A text is too long.
+    TooLong {
+        /// The field.
+        key: String,
+        /// How many bytes it has.
+        got: usize,
+    },
+}
+
+/// Every field of a version, with its default there.
+///
+/// - `version`: 1 to [`VERSION`].
+pub fn defaults(version: u32) -> BTreeMap<&'static str, &'static str> {
+    let mut all: BTreeMap<_, _> = FIRST.iter().copied().collect();
+    for step in &STEPS[..version as usize - 1] {
+        all.extend(step.added.iter().map(|a| (a.key, a.default)));
+        all.extend(step.changed.iter().copied());
+    }
+    all
+}
+
+/// The design of a stored version, from the entries that stand in it.
+///
+/// - `version`: 1 to [`VERSION`].
+/// - `entries`: key and text.
+///
+/// # Errors
+/// The first entry that cannot be used.
+pub fn open(version: u32, entries: Vec<(String, String)>) -> Result<Design, Refused> {
+    let mut texts: BTreeMap<&str, String> =
+        defaults(version).into_iter().map(|(key, text)| (key, text.to_string())).collect();
+    let mut seen = std::collections::BTreeSet::new();
+    for (key, text) in entries {
+        let Some(place) = texts.get_mut(key.as_str()) else {
+            let since = (version + 1..=VERSION).find(|v| defaults(*v).contains_key(key.as_str()));
+            return Err(match since {
+                Some(since) => Refused::Later { key, since },
+                None => Refused::Unknown(key),
+            });
+        };
+        if text.len() > LONGEST_TEXT {
+            return Err(Refused::TooLong { key, got: text.len() });
+        }
+        *place = text;
+        if !seen.insert(key.clone()) {
+            return Err(Refused::Twice(key));
+        }
+    }
+    for step in &STEPS[version as usize - 1..] {
+        texts.extend(step.added.iter().map(|a| (a.key, a.before.to_string())));
+    }
+    let mut design = Design::default();
+    for (key, text) in texts {
+        design.set(key, &text);
+    }
+    Ok(design)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::catalogue::FIELDS;
+
+    /// Whoever changes a default or adds a field comes by here: links of the newest version mean its defaults.
+    #[test]
+    fn law_the_newest_version_is_the_catalogue() {
+        let usual = Design::default();
+        let newest = defaults(VERSION);
+        for f in FIELDS {
+            assert_eq!(
+                newest.get(f.key).copied(),
+                Some(usual.get(f.key)),
+                "{}: needs a step in versions.rs",
+                f.key
+            );
+        }
+        assert_eq!(newest.len(), FIELDS.len(), "versions.rs has a field that the catalogue has not");
+    }
+
+    /// An older design is checked like any other, and so is what stands in for fields that it did not have.
+    #[test]
+    fn law_an_empty_design_of_every_version_is_sound() {
+        for version in 1..=VERSION {
+            let design = open(version, Vec::new()).expect("no entries");
+            assert!(
+                crate::check::check(&design).is_ok(),
+                "version {version}: {:?}",
+                crate::check::check(&design)
+            );
+        }
+    }
+
+    #[test]
+    fn exact_entries_are_refused_by_name() {
+        let of = |entries: &[(&str, &str)]| {
+            open(1, entries.iter().map(|(k, t)| (k.to_string(), t.to_string())).collect())
+        };
+        assert_eq!(of(&[("cell.sea", "1")]), Err(Refused::Unknown("cell.sea".into())));
+        let twice = of(&[("use.press", "1"), ("cell.capacity", "1"), ("use.press", "1")]);
+        assert_eq!(twice, Err(Refused::Twice("use.press".into())));
+        let long = "1".repeat(LONGEST_TEXT + 1);
+        assert_eq!(
+            of(&[("use.press", &long)]),
+            Err(Refused::TooLong { key: "use.press".into(), got: long.len() })
+        );
+    }
+}
