@@ -11,6 +11,10 @@ const SURGE_OVER: f64 = 1e-5;
 /// the solved voltage in every step.
 const SURGE_BEND: f64 = 0.1;
 
+/// How long Newton's last move to the operating point may be, in V: what is left after it is of the order of its
+/// square.
+const MEETS: f64 = 1e-5;
+
 impl Simulator<'_> {
     pub(super) fn factors(&self, y: &Y) -> (f64, f64) {
         let c = &self.circuit;
@@ -71,7 +75,7 @@ impl Simulator<'_> {
             let charging = if load.esr.0 == 0.0 || self.slaved { 0.0 } else { (v - y[CAP]) / load.esr.0 };
             point.at = Held { path, v, draw: path.current - charging, draw_slope: 0.0, charging };
         } else if self.slaved {
-            point.at = self.meet(cell.r0, &at);
+            point.at = self.meet(y[CAP], cell.r0, &at);
         } else if load.esr.0 == 0.0 {
             point.at = at(y[CAP]);
         } else {
@@ -102,12 +106,12 @@ impl Simulator<'_> {
         extra
     }
 
-    /// The operating point nearest to the last one: where path and load draw the same.
-    fn meet(&self, r0: f64, at: &impl Fn(f64) -> Held) -> Held {
-        let mut held = at(self.guess);
+    /// The operating point nearest to `guess`: where path and load draw the same.
+    fn meet(&self, guess: f64, r0: f64, at: &impl Fn(f64) -> Held) -> Held {
+        let mut held = at(guess);
         for _ in 0..20 {
             let by = held.charging / (held.path.conductance + held.draw_slope);
-            if by.abs() < 1e-6 {
+            if by.abs() < MEETS {
                 // What is left is of the order of the square of that.
                 self.shift(&mut held, by, r0);
                 return held;

@@ -28,6 +28,10 @@ const NODES: [(f64, f64); 5] = [
 ];
 /// How near to an operating point a stretch goes, in V; the capacitor is slaved from there.
 const NEAR: f64 = 1e-6;
+/// From how many time constants on a stretch towards an operating point is taken as straight over V.
+const TAIL: f64 = 5.0;
+/// How long Newton's last move to an operating point may be, in V.
+const FOUND: f64 = 1e-8;
 /// How far the slow states may move the source within a stretch, in V.
 const STILL: f64 = 6e-5;
 
@@ -50,8 +54,9 @@ impl Simulator<'_> {
             return false;
         }
         let from = now.point;
-        let Some((to, goal, settled)) = self.goal(now) else { return false };
-        let Some((length, sums, last, nodes)) = self.quadrature(now, to, settled) else { return false };
+        let Some((last, goal, settled)) = self.goal(now) else { return false };
+        let to = last.v;
+        let Some((length, sums, nodes)) = self.quadrature(now, &last, settled) else { return false };
         let c = &self.circuit;
         // The slow states over the stretch, to first order; they must hardly have moved.
         let charge = sums[CHARGE];
@@ -121,9 +126,9 @@ impl Simulator<'_> {
         }
     }
 
-    /// Where the capacitor is heading: the voltage, what is there, and the operating point if the way
+    /// Where the capacitor is heading: path and load there, what is there, and the operating point if the way
     /// leads towards one.
-    fn goal(&self, now: &Moment<'_, '_>) -> Option<(f64, Goal, Option<f64>)> {
+    fn goal(&self, now: &Moment<'_, '_>) -> Option<(Held, Goal, Option<f64>)> {
         let load = &self.setup.load;
         let from = &now.point;
         if from.at.charging.abs() < 1e-9 {
@@ -143,26 +148,24 @@ impl Simulator<'_> {
         };
         // Past it already, by rounding or because it was just left: not a stretch.
         let threshold = threshold.filter(|(v, _)| if rising { *v > from.at.v } else { *v < from.at.v });
-        let reaches = |v: f64| {
-            let charging = self.held(now, v).charging;
-            if rising { charging > 0.0 } else { charging < 0.0 }
-        };
+        let at_threshold = threshold.map(|(v, _)| self.held(now, v));
+        let reached = at_threshold
+            .is_some_and(|there| if rising { there.charging > 0.0 } else { there.charging < 0.0 });
         let knot = self.turning_knot(now, threshold.map(|(v, _)| v));
         let settled = match threshold {
             // i_C keeps its sign to the threshold if it has one change of sign at most; constant power has two.
-            Some((v, _)) if knot.is_none() && reaches(v) => self.power_meeting(now, v),
+            Some((v, _)) if knot.is_none() && reached => self.power_meeting(now, v),
             _ => Some(self.operating_point(now, knot.or(threshold.map(|(v, _)| v)))?),
         };
-        let (mut to, mut goal) = match (settled, threshold) {
-            (Some(v), _) => (v + if rising { -NEAR } else { NEAR }, Goal::Settled),
-            (None, Some((v, crossing))) => (v, Goal::Threshold(crossing)),
+        let (mut end, mut goal) = match (settled, at_threshold.zip(threshold)) {
+            (Some(v), _) => (self.held(now, v + if rising { -NEAR } else { NEAR }), Goal::Settled),
+            (None, Some((there, (_, crossing)))) => (there, Goal::Threshold(crossing)),
             (None, None) => return None,
         };
-        if (to - from.at.v) * from.at.charging <= 0.0 {
+        if (end.v - from.at.v) * from.at.charging <= 0.0 {
             return None;
         }
         // A limit whose sign changes on the way comes first.
-        let mut end = self.held(now, to);
         for k in 0..self.watches.len() {
             let watch = &self.watches[k];
             let over = watch.since.is_some();
@@ -170,11 +173,10 @@ impl Simulator<'_> {
             if passes(self.excess(watch, &from.at)) || !passes(self.excess(watch, &end)) {
                 continue;
             }
-            let v = self.threshold_voltage(now, k, from.at.v, to);
-            (to, goal) = (v, Goal::Threshold(Crossing::Limit(k)));
-            end = self.held(now, to);
+            end = self.at_limit(now, k, &end);
+            goal = Goal::Threshold(Crossing::Limit(k));
         }
-        Some((to, goal, settled))
+        Some((end, goal, settled))
     }
 
     /// Path and load with the load held at `v`, the slow states as they are.
@@ -216,11 +218,10 @@ impl Simulator<'_> {
             if stiffness <= 0.0 || next <= limit {
                 return None;
             }
-            let moved = (next - point.v).abs();
-            point = self.held(now, next);
-            if moved < 1e-12 {
+            if (next - point.v).abs() < FOUND {
                 return Some(next);
             }
+            point = self.held(now, next);
             if point.charging > 0.0 {
                 return self.operating_point(now, Some(next));
             }
@@ -238,17 +239,21 @@ impl Simulator<'_> {
         let mut point = from.at;
         for _ in 0..60 {
             let stiffness = point.path.conductance + point.draw_slope;
-            let mut next = v + point.charging / stiffness;
+            let by = point.charging / stiffness;
+            if stiffness > 0.0 && by.abs() < FOUND {
+                // What is left is of the order of the square of that.
+                return Some(v + by);
+            }
+            let mut next = v + by;
             let inside = if rising { next > before && next < behind } else { next < before && next > behind };
             if !(stiffness > 0.0 && inside) {
                 next = 0.5 * (before + behind);
+                if next == before || next == behind {
+                    return None;
+                }
             }
-            let moved = (next - v).abs();
             v = next;
             point = self.held(now, v);
-            if moved < 1e-12 {
-                return (point.path.conductance + point.draw_slope > 0.0).then_some(v);
-            }
             if (point.charging > 0.0) == rising {
                 before = v;
             } else {
@@ -258,19 +263,22 @@ impl Simulator<'_> {
         None
     }
 
-    /// The voltage between `a` and `b` at which limit `k` is just met.
-    fn threshold_voltage(&self, now: &Moment<'_, '_>, k: usize, a: f64, b: f64) -> f64 {
-        let excess = |v: f64| self.excess(&self.watches[k], &self.held(now, v));
-        let (mut a, mut b) = (a, b);
-        let (mut at_a, mut at_b) = (excess(a), excess(b));
+    /// The place between here and `end` at which limit `k` is just met.
+    fn at_limit(&self, now: &Moment<'_, '_>, k: usize, end: &Held) -> Held {
+        let excess = |held: &Held| self.excess(&self.watches[k], held);
+        let (mut a, mut b) = (now.point.at.v, end.v);
+        let (mut at_a, mut at_b) = (excess(&now.point.at), excess(end));
+        let mut there = *end;
         let mut side = 0;
         for _ in 0..60 {
             let secant = a + (b - a) * at_a / (at_a - at_b);
             let v =
                 if secant.is_finite() && (secant - a) * (secant - b) < 0.0 { secant } else { 0.5 * (a + b) };
-            let value = excess(v);
-            if value.abs() < 1e-13 || (b - a).abs() < 1e-12 {
-                return v;
+            there = self.held(now, v);
+            let value = excess(&there);
+            // Far below what counts as past a limit.
+            if value.abs() < 1e-11 || (b - a).abs() < 1e-12 {
+                return there;
             }
             if (value > 0.0) == (at_a > 0.0) {
                 (a, at_a) = (v, value);
@@ -286,17 +294,17 @@ impl Simulator<'_> {
                 side = -1;
             }
         }
-        b
+        there
     }
 
-    /// Time, sums and the last point of the way to `to`, and how many nodes it took.
+    /// Time and sums of the way to `last`, and how many nodes it took.
     fn quadrature(
         &self,
         now: &Moment<'_, '_>,
-        to: f64,
+        last: &Held,
         settled: Option<f64>,
-    ) -> Option<(f64, [f64; SUMS], Held, u32)> {
-        let from = now.point.at.v;
+    ) -> Option<(f64, [f64; SUMS], u32)> {
+        let (from, to) = (now.point.at.v, last.v);
         let capacitance = self.setup.load.capacitance.0;
         let mut length = 0.0;
         let mut sums = [0.0; SUMS];
@@ -313,14 +321,15 @@ impl Simulator<'_> {
         };
         match settled {
             Some(v_e) => {
-                let all = crate::math::ln((v_e - from) / (v_e - to));
+                let whole = v_e - from;
+                let all = crate::math::ln(whole / (v_e - to));
                 let mut a = 0.0;
                 // The integrand goes to a constant as e^(−s): pieces grow with s.
-                for b in [1.5, 3.5, 7.0, f64::INFINITY] {
+                for b in [1.5, TAIL] {
                     let b = all.min(b);
                     let (middle, half) = (0.5 * (a + b), 0.5 * (b - a));
                     for (x, weight) in NODES {
-                        let away = (v_e - from) * crate::math::exp(-(middle + half * x));
+                        let away = whole * crate::math::exp(-(middle + half * x));
                         add(v_e - away, away, weight * half);
                     }
                     a = b;
@@ -328,10 +337,20 @@ impl Simulator<'_> {
                         break;
                     }
                 }
+                if all > a {
+                    // So near the operating point everything is straight over V, and the way is an exponential:
+                    // two places tell all. `away` integrates to its own fall, over what falls by one in an s.
+                    let (begin, end) = (whole * crate::math::exp(-a), v_e - to);
+                    let mean = (begin - end) / (all - a);
+                    // Weights that integrate 1 and `away` over s exactly, from the places `begin` and `end`.
+                    let at_begin = (all - a) * (mean - end) / (begin - end);
+                    add(v_e - begin, begin, at_begin);
+                    add(v_e - end, end, (all - a) - at_begin);
+                }
             }
             None => {
                 // Near an operating point 1/i_C is steep: two pieces there.
-                let steep = self.held(now, to).charging / now.point.at.charging < 0.3;
+                let steep = last.charging / now.point.at.charging < 0.3;
                 let pieces = if steep { 2 } else { 1 };
                 let piece = (to - from) / f64::from(pieces);
                 for k in 0..pieces {
@@ -342,6 +361,6 @@ impl Simulator<'_> {
                 }
             }
         }
-        (length.is_finite() && length >= 0.0).then(|| (length, sums, self.held(now, to), nodes))
+        (length.is_finite() && length >= 0.0).then_some((length, sums, nodes))
     }
 }
