@@ -50,9 +50,10 @@ const SUMS: usize = 9;
 type Y = [f64; STATES];
 type Step = dormand_prince::Step<Point, STATES, SUMS>;
 
-/// What one step may be wrong by, per state: ten microvolts and what makes as much; for the
+/// What one step may be wrong by, per state: ten microvolts and what makes as much; for the switches a
+/// millikelvin, since a short thermal time constant keeps the error of a long press at what one step may have; for the
 /// capacitor, whose energy stands in the ledger of a press that ends in the inrush, half a microvolt.
-const TOLERANCE: Y = [1e-6, 1e-5, 1e-5, 1e-5, 2e-3, 1e-2, 1e-2, 5e-7];
+const TOLERANCE: Y = [1e-6, 1e-5, 1e-5, 1e-5, 2e-3, 1e-3, 1e-3, 5e-7];
 /// The capacitor is slaved once it is this close to the operating point, in V.
 const SLAVED_WITHIN: f64 = 1e-6;
 /// How far the charge of a slaved capacitor may part from its integrated current in a step, in A·s.
