@@ -20,15 +20,18 @@ pub enum Part {
     Load,
     /// How it is used.
     Use,
+    /// The charger.
+    Charger,
 }
 
 /// All parts, in order, with how the page names them.
-pub const PARTS: [(Part, &str); 6] = [
+pub const PARTS: [(Part, &str); 7] = [
     (Part::Cell, "Cell"),
     (Part::Board, "Board"),
     (Part::Leads, "Leads and switch"),
     (Part::Load, "Load"),
     (Part::Use, "Use"),
+    (Part::Charger, "Charger"),
     (Part::Second, "Second protector, in the cell's wrap"),
 ];
 
@@ -66,7 +69,7 @@ pub enum Kind {
 pub enum When {
     /// Always.
     Always,
-    /// Only while the field with this key is one of these.
+    /// Only while the field with this key matters itself and is one of these.
     Is(&'static str, &'static [&'static str]),
 }
 
@@ -98,6 +101,12 @@ const fn shown(unit: Unit, text: &'static str, worth: f64) -> Shown {
 const V: Shown = shown(Unit::Volt, "V", 1.0);
 const MV: Shown = shown(Unit::Volt, "mV", 1e-3);
 const A: Shown = shown(Unit::Ampere, "A", 1.0);
+const MA: Shown = shown(Unit::Ampere, "mA", 1e-3);
+const A2S: Shown = shown(Unit::SquareAmpereSecond, "A²s", 1.0);
+const KV: Shown = shown(Unit::Volt, "kV", 1e3);
+const NF: Shown = shown(Unit::Farad, "nF", 1e-9);
+const HOURS: Shown = shown(Unit::Second, "h", 3600.0);
+const DAYS: Shown = shown(Unit::Second, "d", 86_400.0);
 const UA: Shown = shown(Unit::Ampere, "µA", 1e-6);
 const OHM: Shown = shown(Unit::Ohm, "Ω", 1.0);
 const MOHM: Shown = shown(Unit::Ohm, "mΩ", 1e-3);
@@ -163,6 +172,11 @@ const ONE_READING: When = When::Is("cell.route", &["measured"]);
 const SAG: When = When::Is("cell.route", &["sag"]);
 const BRANCHES: When = When::Is("cell.route", &["branches"]);
 
+const FUSED: When = When::Is("leads.fuse", &["quick", "lag", "i2t", "ptc"]);
+const MELTS: When = When::Is("leads.fuse", &["quick", "lag", "i2t"]);
+const PTC: When = When::Is("leads.fuse", &["ptc"]);
+const CHARGER: When = When::Is("charger.fitted", &["yes"]);
+
 const YES_NO: Kind = Kind::Choice(&[("no", "none"), ("yes", "fitted")]);
 const SENSE: Kind = Kind::Choice(&[("pair", "over the switch pair"), ("shunt", "over a shunt")]);
 
@@ -184,7 +198,17 @@ pub const FIELDS: &[Field] = fields![
     "cell.sag_current" Cell plain SAG, "Load current", may(A, 0.01, 200.0), "", "While the loaded voltage was read.";
     "cell.sag_time" Cell plain SAG, "Read after", needs(S, 0.1, 600.0), "10 s", "From switching the load on to the reading.";
     "cell.continuous" Cell folded ALWAYS, "Continuous current", may(A, 0.01, 1000.0), "", "What the maker allows one cell for good. Left empty: not judged.";
+    "cell.pulse" Cell folded ALWAYS, "Pulse current", may(A, 0.01, 1000.0), "", "What the maker allows one cell for a short time. Data sheet: pulse or peak discharge current. Left empty: not judged.";
+    "cell.pulse_time" Cell folded ALWAYS, "Pulse current, for", needs(S, 1e-3, 600.0), "10 s", "How long the pulse current may last, from the same line of the data sheet.";
+    "cell.charge" Cell folded ALWAYS, "Charge current, most", may(A, 0.001, 1000.0), "", "What the maker allows one cell. Data sheet: maximum charge current, often 0.5 to 1 times the capacity. Left empty: not judged.";
+    "cell.voltage_max" Cell folded ALWAYS, "Charge voltage, most", may(V, 1.5, 5.0), "", "Data sheet: charge voltage limit. Left empty: that of the kind of cell.";
+    "cell.voltage_min" Cell folded ALWAYS, "Discharge voltage, least", may(V, 0.5, 4.5), "", "Data sheet: discharge cut-off voltage. Left empty: that of the kind of cell.";
+    "cell.discharge_cold" Cell folded ALWAYS, "Coldest in use", needs(DEG, -60.0, 60.0), "-20 °C", "Data sheet: operating temperature, discharge. The cell's own temperature.";
+    "cell.discharge_hot" Cell folded ALWAYS, "Hottest in use", needs(DEG, 0.0, 120.0), "60 °C", "Data sheet: operating temperature, discharge.";
+    "cell.charge_cold" Cell folded ALWAYS, "Coldest in charge", needs(DEG, -60.0, 60.0), "0 °C", "Data sheet: operating temperature, charge. Below it the cell is damaged for good.";
+    "cell.charge_hot" Cell folded ALWAYS, "Hottest in charge", needs(DEG, 0.0, 120.0), "45 °C", "Data sheet: operating temperature, charge.";
     "cell.parallel" Cell folded ALWAYS, "Cells in parallel", needs(COUNT, 1.0, 20.0), "1", "Equal cells, joined for good.";
+    "cell.mismatch" Cell folded ALWAYS, "Parallel cells differ by", needs(V, 0.0, 4.2), "0 V", "Difference of the rested voltages when the cells are joined; a meter shows it. Counts with two or more cells in parallel.";
     "cell.health" Cell folded ALWAYS, "Capacity left with age", needs(PERCENT, 0.2, 1.0), "100 %", "100 % when new; 80 % is the usual end of life.";
     "cell.growth" Cell folded ALWAYS, "Resistance growth with age", needs(RATIO, 0.5, 10.0), "1", "1 when new; about 2 at the end of life.";
     "cell.tolerance" Cell folded LABEL, "Resistance may be higher by", needs(PERCENT, 0.0, 2.0), "25 %", "The weak corner takes every resistance of the cell higher by this.";
@@ -220,6 +244,8 @@ pub const FIELDS: &[Field] = fields![
     "board.delay4" Board folded ALWAYS, "A limit in amps, delay", about(MS, 0.0, 100.0, 0.2), "10 ms", "Its delay.";
     "board.od" Board folded ALWAYS, "Over-discharge voltage", may_about(V, 0.5, 4.0, 0.04), "2.4 ± 0.1 V", "Data sheet: over-discharge detection voltage.";
     "board.od_delay" Board folded ALWAYS, "Over-discharge delay", about(MS, 0.0, 1000.0, 0.5), "40 ms", "Data sheet: over-discharge detection delay.";
+    "board.oc" Board folded ALWAYS, "Over-charge voltage", may_about(V, 2.0, 6.0, 0.012), "4.3 ± 0.05 V", "Data sheet: over-charge detection voltage. Left empty: the board has none, or it is not known.";
+    "board.charge_sense" Board folded ALWAYS, "Charge over-current sense voltage", may_about(MV, 1e-3, 10.0, 0.2), "", "Data sheet: charge over-current detection voltage, without its minus sign. Many protectors have none: leave it empty.";
     "board.release" Board folded ALWAYS, "Conducts again", Kind::Choice(&[
         ("load_removed", "when the load is taken away"), ("retry", "by itself, after a while"),
         ("charger", "when a charger is connected"),
@@ -242,9 +268,27 @@ pub const FIELDS: &[Field] = fields![
         ("ideal", "pure copper"),
     ]), "flexible", "The class's largest resistance is taken; pure copper is the least it can be.";
     "leads.temperature" Leads folded ALWAYS, "Conductor temperature", needs(DEG, -40.0, 120.0), "20 °C", "Copper gains 0.39 % per K.";
-    "leads.cell_joints" Leads folded ALWAYS, "Joints and fuse ahead of the board", needs(MOHM, 0.0, 10.0), "4 mΩ", "Connector, solder joints, cell-side fuse or PTC when cold.";
-    "leads.load_joints" Leads folded ALWAYS, "Joints after the board", needs(MOHM, 0.0, 10.0), "4 mΩ", "Connector, solder joints, fuse when cold.";
+    "leads.insulation" Leads folded ALWAYS, "Insulation", Kind::Choice(&[
+        ("unknown", "not known"), ("pvc", "PVC"), ("xlpe", "cross-linked PE or rubber"), ("silicone", "silicone"),
+    ]), "pvc", "Printed on the wire or its reel; most hook-up wire is PVC. Says how hot a lead may get in a short. Not known: not judged.";
+    "leads.cell_joints" Leads folded ALWAYS, "Joints ahead of the board", needs(MOHM, 0.0, 10.0), "4 mΩ", "Connector and solder joints between cell and board, all together, without the fuse.";
+    "leads.load_joints" Leads folded ALWAYS, "Joints after the board", needs(MOHM, 0.0, 10.0), "4 mΩ", "Connector and solder joints between board and load, all together.";
     "leads.switch" Leads plain ALWAYS, "Push button", about(MOHM, 0.0, 10.0, 0.5), "10 mΩ", "Contact resistance; a small tactile switch has 30 to 100 mΩ.";
+    "leads.fuse" Leads folded ALWAYS, "Fuse between cell and board", Kind::Choice(&[
+        ("none", "none"), ("quick", "quick acting, F (IEC 60127-2)"), ("lag", "time-lag, T (IEC 60127-2)"),
+        ("i2t", "another, by its melting I²t"), ("ptc", "resettable (PTC)"),
+    ]), "none", "F or T stands on the cap of a miniature fuse, before the amps.";
+    "leads.fuse_rating" Leads folded FUSED, "Fuse, rated current", needs(A, 0.01, 100.0), "4 A", "On its cap. Of a PTC: the hold current at 23 °C, from its data sheet.";
+    "leads.fuse_cold" Leads folded FUSED, "Fuse, resistance", about(MOHM, 0.0, 10.0, 0.2), "17 mΩ", "Data sheet: cold resistance; or measure it with four wires. Of a PTC: after it has tripped once, the most.";
+    "leads.fuse_i2t" Leads folded When::Is("leads.fuse", &["i2t"]), "Fuse, melting I²t", may_about(A2S, 1e-6, 1e6, 0.3), "", "Data sheet: melting or pre-arcing I²t. Fuses of one rating differ six-fold, so there is no usual value.";
+    "leads.fuse_breaking" Leads folded MELTS, "Fuse, breaking capacity", may(A, 0.1, 1e6), "", "Data sheet: the largest current it can interrupt, at d.c. Left empty: not judged.";
+    "leads.ptc_trip" Leads folded PTC, "PTC, trip current", may(A, 0.01, 1000.0), "", "Data sheet: trip current at 23 °C. Left empty: twice the rated current.";
+    "leads.ptc_time" Leads folded PTC, "PTC, time to trip", needs(S, 1e-3, 1e4), "20 s", "Data sheet: longest time to trip, at the current below.";
+    "leads.ptc_at" Leads folded PTC, "PTC, that time is at", may(A, 0.01, 1000.0), "", "The current beside the time to trip. Left empty: five times the rated current.";
+    "leads.button_current" Leads folded ALWAYS, "Push button, rated current", may(A, 1e-3, 1000.0), "", "On the switch or in its data sheet; the figure for d.c. A small tactile switch stands 0.05 A. Left empty: not judged.";
+    "leads.button_voltage" Leads folded ALWAYS, "Push button, rated voltage", may(V, 0.1, 1000.0), "", "Beside the current; the figure for d.c. Left empty: not judged.";
+    "leads.connector_current" Leads folded ALWAYS, "Connector, rated current", may(A, 1e-3, 1000.0), "", "Of the weakest connector on the way from cell to load, per contact. Left empty: not judged.";
+    "leads.connector_voltage" Leads folded ALWAYS, "Connector, rated voltage", may(V, 0.1, 1000.0), "", "From the same data sheet. Left empty: not judged.";
     // Load
     "load.law" Load plain ALWAYS, "Draw when lit", Kind::Choice(&[
         ("table", "measured: volts and amps"), ("current", "the same current"), ("power", "the same power"),
@@ -265,11 +309,30 @@ pub const FIELDS: &[Field] = fields![
     "load.capacitance" Load folded ALWAYS, "Input capacitor", needs(UF, 1e-6, 10.0), "100 µF", "At least 1 µF.";
     "load.esr" Load folded ALWAYS, "Its series resistance", needs(MOHM, 0.0, 10.0), "0 mΩ", "0 for ceramic capacitors.";
     "load.peak" Load folded ALWAYS, "Peak over mean of the draw", needs(RATIO, 1.0, 10.0), "1", "The board sees peaks: 1 for a smooth draw.";
+    "load.output" Load folded ALWAYS, "Output voltage, peak", may(KV, 1.0, 1e6), "", "From the driver's description. Do not measure it with a common meter: it is made for less. Left empty: not judged.";
+    "load.output_capacitance" Load folded ALWAYS, "Capacitance on the output", may(NF, 0.0, 1e-3), "", "Of a capacitor that is charged to the output voltage; 0 where there is none. Left empty: not judged.";
     // Use
     "use.press" Use plain ALWAYS, "Press", needs(S, 0.01, 3600.0), "4 s", "How long the button is held.";
     "use.rest" Use plain ALWAYS, "Rest", needs(S, 0.0, 1e7), "8 s", "Between two presses.";
     "use.ambient" Use plain ALWAYS, "Temperature", needs(DEG, -40.0, 70.0), "20 °C", "Of the surroundings; the cell starts with it.";
     "use.presses" Use folded ALWAYS, "Follow at most", needs(COUNT, 1.0, 20_000.0), "5000", "Presses per charge; a charge that goes on is ended there, and says so.";
+    "use.per_day" Use folded ALWAYS, "Presses a day", needs(COUNT, 0.0, 10_000.0), "20", "For how many days a charge lasts. 0: not asked.";
+    "use.storage" Use folded ALWAYS, "Days on the shelf", needs(DAYS, 0.0, 3650.0 * 86_400.0), "180 d", "Longest time between two charges. 0: not asked.";
+    "use.held" Use folded ALWAYS, "Held by accident for", needs(HOURS, 0.0, 1000.0 * 3600.0), "1 h", "In a pocket, or a button that sticks. 0: not asked.";
+    "use.cold" Use folded ALWAYS, "Coldest use", may(DEG, -40.0, 70.0), "0 °C", "Of the surroundings. Left empty, or above the temperature: the temperature itself.";
+    "use.case" Use folded ALWAYS, "Case", Kind::Choice(&[("open", "open"), ("closed", "closed")]), "closed", "A closed case lets about half the heat go.";
+    // Charger
+    "charger.fitted" Charger plain ALWAYS, "Charger", YES_NO, "no", "A linear charger for one cell, on the protection board or beside it.";
+    "charger.current" Charger plain CHARGER, "Charge current", about(A, 1e-3, 50.0, 0.1), "1 A", "Set by a resistor on the charger; most are sold at 1 A. Of the charger, not of one cell.";
+    "charger.float" Charger folded CHARGER, "Charge voltage", about(V, 2.0, 5.0, 0.015), "4.2 V", "Data sheet: float or regulation voltage.";
+    "charger.termination" Charger folded CHARGER, "Ends at", may(A, 1e-4, 50.0), "", "It ends when its current falls below this. Data sheet: termination current. Left empty: a tenth of the charge current.";
+    "charger.trickle_below" Charger folded CHARGER, "Trickle below", needs(V, 0.0, 4.5), "2.9 V", "Below this it gives the trickle current only. Data sheet: trickle or pre-charge threshold.";
+    "charger.trickle" Charger folded CHARGER, "Trickle current", may(A, 0.0, 50.0), "", "Data sheet: trickle or pre-charge current. Left empty: a tenth of the charge current.";
+    "charger.supply" Charger folded CHARGER, "Supply", needs(V, 2.5, 30.0), "5 V", "What feeds it; 5 V from a USB port.";
+    "charger.load" Charger folded CHARGER, "Drawn meanwhile", needs(MA, 0.0, 50.0), "0 mA", "What stays connected to the cell and draws current while it is charged, button not pressed.";
+    "charger.cold" Charger folded CHARGER, "Charged from", needs(DEG, -40.0, 70.0), "10 °C", "Coldest surroundings in which it is charged.";
+    "charger.hot" Charger folded CHARGER, "Charged up to", needs(DEG, -40.0, 70.0), "30 °C", "Hottest surroundings in which it is charged.";
+    "charger.power" Charger folded CHARGER, "Power it stands", may(W, 0.01, 100.0), "", "Heat at which the charger folds back, as it is mounted. Left empty: not judged.";
     // Second protector
     "second.fitted" Second folded ALWAYS, "Second protector", YES_NO, "no", "Many pouch cells carry a strip with a protector of their own under the tape.";
     "second.stage1" Second folded SECOND, "Over-current sense voltage", may_about(MV, 1e-3, 10.0, 0.2), "150 ± 30 mV", "As for the board.";
@@ -278,6 +341,8 @@ pub const FIELDS: &[Field] = fields![
     "second.pairs" Second folded SECOND, "Pairs in parallel", needs(COUNT, 1.0, 20.0), "1", "As for the board.";
     "second.od" Second folded SECOND, "Over-discharge voltage", may_about(V, 0.5, 4.0, 0.04), "2.8 ± 0.1 V", "As for the board.";
     "second.od_delay" Second folded SECOND, "Over-discharge delay", about(MS, 0.0, 1000.0, 0.5), "100 ms", "As for the board.";
+    "second.oc" Second folded SECOND, "Over-charge voltage", may_about(V, 2.0, 6.0, 0.012), "4.28 ± 0.05 V", "As for the board.";
+    "second.charge_sense" Second folded SECOND, "Charge over-current sense voltage", may_about(MV, 1e-3, 10.0, 0.2), "", "As for the board.";
 ];
 
 /// The field with this key.

@@ -1,11 +1,15 @@
 //! From what is entered to setups that can be simulated, or every fault at once.
 //!
-//! Two setups come out: nominal parts, and weak ones with every tolerance at its unfavourable end.
+//! Setups come out: nominal parts, weak ones with every tolerance at its unfavourable end, and nominal ones whose
+//! protectors trip as early, or as late, as they may. Beside them stand the ratings.
+
+mod ratings;
 
 use strikeline_core::board::{Board, OverDischarge, Release, SensePoint, Stage, Threshold};
 use strikeline_core::cell::{Branch, Cell};
 use strikeline_core::load::{LitDraw, Load};
 use strikeline_core::math::{Monotone, Polyline, exp};
+use strikeline_core::ratings::{CellRatings, Fuse, LeadRating, OverCharge, Ratings};
 use strikeline_core::setup::{Arrangement, Path, Setup, Use};
 use strikeline_core::units::{AmpHours, Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
 use strikeline_core::wiring::{Conductor, Lead, Series};
@@ -31,6 +35,31 @@ pub struct Checked {
     pub nominal: Setup,
     /// Every tolerance at its unfavourable end at once.
     pub weak: Setup,
+    /// Nominal, but board and second protector open as early as their tolerances allow: sense thresholds and limits
+    /// in amps at their lowest, over-discharge at its highest, delays at their shortest, pair at its highest.
+    pub low: Setup,
+    /// Nominal, but board and second protector open as late as their tolerances allow.
+    pub high: Setup,
+    /// What the parts are rated for and what surrounds them.
+    pub ratings: Ratings,
+}
+
+/// A protector as its tolerances allow.
+struct Protector {
+    nominal: Board,
+    /// Opens at the lowest current and after the shortest time.
+    earliest: Board,
+    /// The reverse.
+    latest: Board,
+    over_charge: Option<OverCharge>,
+}
+
+/// What lies between the parts.
+struct Wiring {
+    nominal: Path,
+    weak: Path,
+    fuse: Option<Fuse>,
+    leads: Vec<LeadRating>,
 }
 
 /// Checks a design.
@@ -174,51 +203,70 @@ impl Reader<'_> {
             "no_board" => Arrangement::NoBoard,
             _ => Arrangement::ThroughBoard,
         };
-        let boards = self.board();
-        let seconds = if self.choice("second.fitted") == "yes" { Some(self.second()) } else { None };
-        let paths = self.paths();
+        let board = self.board();
+        let second = if self.choice("second.fitted") == "yes" { Some(self.second()) } else { None };
+        let wiring = self.wiring();
         let loads = self.load();
         let supply = self.value("board.supply");
         let usage = self.usage(if arrangement == Arrangement::NoBoard { Some(0.0) } else { supply });
-        let (cell, weak_cell) = cells?;
-        let (board, weak_board) = boards?;
-        let (path, weak_path) = paths?;
+        let button = self.contact("leads.button_current", "leads.button_voltage");
+        let connector = self.contact("leads.connector_current", "leads.connector_voltage");
+        let output = self.output();
+        let keeping = self.keeping(usage.as_ref().map(|u| u.ambient));
+        let charger = self.charger();
+        let (cell, weak_cell, cell_ratings) = cells?;
+        let board = board?;
+        let wiring = wiring?;
         let (load, weak_load) = loads?;
-        let (second, weak_second) = match seconds {
-            Some(pair) => pair.map(|(a, b)| (Some(a), Some(b)))?,
-            None => (None, None),
+        let second = match second {
+            Some(second) => Some(second?),
+            None => None,
         };
-        let usage = usage?;
-        let fitted = arrangement != Arrangement::NoBoard;
+        let fitted = (arrangement != Arrangement::NoBoard).then_some(board);
         let nominal = Setup {
             cell,
-            second_protector: second,
-            path,
-            board: fitted.then_some(board),
+            second_protector: second.as_ref().map(|p| p.nominal.clone()),
+            path: wiring.nominal,
+            board: fitted.as_ref().map(|p| p.nominal.clone()),
             arrangement,
             load,
-            usage,
+            usage: usage?,
         };
-        let weak = Setup {
-            cell: weak_cell,
-            second_protector: weak_second,
-            path: weak_path,
-            board: fitted.then_some(weak_board),
-            arrangement,
-            load: weak_load,
-            usage,
+        let low = Setup {
+            second_protector: second.as_ref().map(|p| p.earliest.clone()),
+            board: fitted.as_ref().map(|p| p.earliest.clone()),
+            ..nominal.clone()
         };
-        Some(Checked { nominal, weak })
+        let high = Setup {
+            second_protector: second.as_ref().map(|p| p.latest.clone()),
+            board: fitted.as_ref().map(|p| p.latest.clone()),
+            ..nominal.clone()
+        };
+        let weak = Setup { cell: weak_cell, path: wiring.weak, load: weak_load, ..low.clone() };
+        let ratings = Ratings {
+            cell: cell_ratings,
+            charger: charger?,
+            board_over_charge: fitted.and_then(|p| p.over_charge),
+            second_over_charge: second.and_then(|p| p.over_charge),
+            fuse: wiring.fuse,
+            leads: wiring.leads,
+            button,
+            connector,
+            output,
+            keeping: keeping?,
+            load_estimated: false,
+        };
+        Some(Checked { nominal, weak, low, high, ratings })
     }
 
-    fn cell(&mut self) -> Option<(Cell, Cell)> {
+    fn cell(&mut self) -> Option<(Cell, Cell, CellRatings)> {
         let key = self.choice("cell.chemistry").to_string();
         let kind = shipped::chemistry(&key).unwrap_or(&shipped::CHEMISTRIES[0]);
         let capacity = self.value("cell.capacity");
         let parallel = self.count("cell.parallel");
         let health = self.value("cell.health");
         let growth = self.value("cell.growth");
-        let continuous = self.value("cell.continuous");
+        let ratings = self.cell_ratings(kind, capacity);
         let heat = self.value("cell.heat");
         let cooling = self.value("cell.cooling");
         let activations = (self.value("cell.r0_activation"), self.value("cell.branch_activation"));
@@ -232,7 +280,6 @@ impl Reader<'_> {
         cell.growth = growth?;
         cell.heat_capacity_j_per_k = heat.unwrap_or(cell.heat_capacity_j_per_k * f64::from(cell.parallel));
         cell.cooling_w_per_k = cooling.unwrap_or(cell.cooling_w_per_k * f64::from(cell.parallel));
-        cell.limits.continuous = continuous.map(Amps);
         if let Some(ocv) = ocv {
             cell.ocv = ocv;
         }
@@ -248,9 +295,11 @@ impl Reader<'_> {
         cell.r0_activation = activations.0.unwrap_or(cell.r0_activation);
         cell.branch_activation = activations.1.unwrap_or(cell.branch_activation);
         let more = self.resistance(&mut cell)?;
+        let ratings = ratings?;
+        cell.limits = ratings::limits(&ratings);
         let mut weak = cell.clone();
         scale(&mut weak, more);
-        Some((cell, weak))
+        Some((cell, weak, ratings))
     }
 
     /// A voltage curve of the builder's own.
@@ -336,7 +385,8 @@ impl Reader<'_> {
         }
     }
 
-    fn stage(&mut self, name: &str, limit: &'static str, delay: &'static str) -> Option<(Stage, Stage)> {
+    /// A stage as it is, at its earliest and at its latest.
+    fn stage(&mut self, name: &str, limit: &'static str, delay: &'static str) -> Option<[Stage; 3]> {
         let amps = limit == "board.limit4";
         let threshold = self.toleranced(limit);
         let delay = self.toleranced(delay);
@@ -346,21 +396,22 @@ impl Reader<'_> {
             threshold: if amps { Threshold::Current(Amps(value)) } else { Threshold::Sense(Volts(value)) },
             delay: Seconds(delay),
         };
-        Some((of(threshold.typical, delay.typical), of(threshold.min, delay.min)))
+        Some([
+            of(threshold.typical, delay.typical),
+            of(threshold.min, delay.min),
+            of(threshold.max, delay.max),
+        ])
     }
 
-    fn over_discharge(
-        &mut self,
-        at: &'static str,
-        delay: &'static str,
-    ) -> (Option<OverDischarge>, Option<OverDischarge>) {
+    /// Over-discharge as it is, at its earliest and at its latest.
+    fn over_discharge(&mut self, at: &'static str, delay: &'static str) -> [Option<OverDischarge>; 3] {
         let (threshold, delay) = (self.toleranced(at), self.toleranced(delay));
-        let (Some(threshold), Some(delay)) = (threshold, delay) else { return (None, None) };
-        let of = |v: f64, s: f64| OverDischarge { threshold: Volts(v), delay: Seconds(s) };
-        (Some(of(threshold.typical, delay.typical)), Some(of(threshold.max, delay.min)))
+        let (Some(threshold), Some(delay)) = (threshold, delay) else { return [None; 3] };
+        let of = |v: f64, s: f64| Some(OverDischarge { threshold: Volts(v), delay: Seconds(s) });
+        [of(threshold.typical, delay.typical), of(threshold.max, delay.min), of(threshold.min, delay.max)]
     }
 
-    fn board(&mut self) -> Option<(Board, Board)> {
+    fn board(&mut self) -> Option<Protector> {
         let rows = [
             ("over_current", "board.stage1", "board.delay1"),
             ("over_current_2", "board.stage2", "board.delay2"),
@@ -370,6 +421,7 @@ impl Reader<'_> {
         let stages: Vec<_> =
             rows.into_iter().filter_map(|(name, limit, delay)| self.stage(name, limit, delay)).collect();
         let od = self.over_discharge("board.od", "board.od_delay");
+        let over_charge = self.over_charge("board.oc", "board.charge_sense", od[0].map(|od| od.threshold));
         let pair = self.toleranced("board.pair");
         let pairs = self.count("board.pairs");
         let on = self.polyline("board.on", 1e-5, 10.0);
@@ -404,25 +456,24 @@ impl Reader<'_> {
             thermal_time: Seconds(time?),
             shunt: Ohms(shunt?),
             sense,
-            stages: stages.iter().map(|s| s.0.clone()).collect(),
-            over_discharge: od.0,
+            stages: stages.iter().map(|s| s[0].clone()).collect(),
+            over_discharge: od[0],
             release,
         };
-        let weak = Board {
-            on_resistance: match on {
-                Some(on) => on,
-                None => usual_on_resistance(pair.max),
-            },
-            stages: stages.into_iter().map(|s| s.1).collect(),
-            over_discharge: od.1,
+        let corner = |pair: f64, k: usize| Board {
+            on_resistance: on.clone().unwrap_or_else(|| usual_on_resistance(pair)),
+            stages: stages.iter().map(|s| s[k].clone()).collect(),
+            over_discharge: od[k],
             ..nominal.clone()
         };
-        Some((nominal, weak))
+        let (earliest, latest) = (corner(pair.max, 1), corner(pair.min, 2));
+        Some(Protector { nominal, earliest, latest, over_charge })
     }
 
-    fn second(&mut self) -> Option<(Board, Board)> {
+    fn second(&mut self) -> Option<Protector> {
         let stage = self.stage("over_current", "second.stage1", "second.delay1");
         let od = self.over_discharge("second.od", "second.od_delay");
+        let over_charge = self.over_charge("second.oc", "second.charge_sense", od[0].map(|od| od.threshold));
         let pair = self.toleranced("second.pair");
         let pairs = self.count("second.pairs");
         let pair = pair?;
@@ -434,20 +485,21 @@ impl Reader<'_> {
             thermal_time: Seconds(8.0),
             shunt: Ohms(0.0),
             sense: SensePoint::Pair,
-            stages: stage.iter().map(|s| s.0.clone()).collect(),
-            over_discharge: od.0,
+            stages: stage.iter().map(|s| s[0].clone()).collect(),
+            over_discharge: od[0],
             release: Release::LoadRemoved,
         };
-        let weak = Board {
-            on_resistance: usual_on_resistance(pair.max),
-            stages: stage.into_iter().map(|s| s.1).collect(),
-            over_discharge: od.1,
+        let corner = |pair: f64, k: usize| Board {
+            on_resistance: usual_on_resistance(pair),
+            stages: stage.iter().map(|s| s[k].clone()).collect(),
+            over_discharge: od[k],
             ..nominal.clone()
         };
-        Some((nominal, weak))
+        let (earliest, latest) = (corner(pair.max, 1), corner(pair.min, 2));
+        Some(Protector { nominal, earliest, latest, over_charge })
     }
 
-    fn paths(&mut self) -> Option<(Path, Path)> {
+    fn wiring(&mut self) -> Option<Wiring> {
         let conductor = match self.choice("leads.conductor") {
             "tinned" => Conductor::FlexibleTinned,
             "solid" => Conductor::Solid,
@@ -459,28 +511,32 @@ impl Reader<'_> {
         let load = (self.value("leads.load_length"), self.value("leads.load_section"));
         let joints = (self.value("leads.cell_joints"), self.value("leads.load_joints"));
         let switch = self.toleranced("leads.switch");
+        let fuse = self.fuse();
+        let insulation = self.insulation();
         let t = Celsius(t?);
         let switch = switch?;
         let lead = |length_m, area_mm2| Lead { length_m, area_mm2, conductor, temperature: t };
         let series = Series {
             cell_leads: lead(cell.0?, cell.1?),
-            fuse: Ohms(0.0), // entered as one of the joints
+            fuse: Ohms(0.0),
             cell_joints: Ohms(joints.0?),
             load_leads: lead(load.0?, load.1?),
             load_joints: Ohms(joints.1?),
             switch: Ohms(0.0),
         };
-        let of = |switch: f64| Series { switch: Ohms(switch), ..series }.path();
-        let paths = (of(switch.typical), of(switch.max));
+        let leads = ratings::leads(insulation, &series.cell_leads, &series.load_leads);
+        let (fuse, cold) = fuse?;
+        let of = |switch: f64, fuse: f64| Series { switch: Ohms(switch), fuse: Ohms(fuse), ..series }.path();
+        let (nominal, weak) = (of(switch.typical, cold.typical), of(switch.max, cold.max));
         // A path of nothing at all has no current to solve for.
-        if paths.0.ahead.0 + paths.0.after.0 <= 0.0 {
+        if nominal.ahead.0 + nominal.after.0 <= 0.0 {
             self.fault(
                 "leads.load_joints",
                 "leads, joints and switch are all 0; accepted is more than 0 mΩ together".into(),
             );
             return None;
         }
-        Some(paths)
+        Some(Wiring { nominal, weak, fuse, leads })
     }
 
     fn load(&mut self) -> Option<(Load, Load)> {
@@ -641,6 +697,7 @@ fn usual_on_resistance(at_3_8: f64) -> Polyline {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use strikeline_core::ratings::FuseKind;
 
     #[test]
     fn exact_weak_parts_take_the_unfavourable_end() {
@@ -658,5 +715,106 @@ mod tests {
         let pair = |setup: &Setup| setup.board.as_ref().expect("a board").on_resistance.at(3.8);
         let got = (pair(&checked.nominal), pair(&checked.weak));
         assert!((got.0 - 0.05).abs() < 1e-12 && (got.1 - 0.065).abs() < 1e-12, "{got:?}");
+    }
+
+    #[test]
+    fn exact_a_protector_at_its_earliest_and_latest() {
+        let mut design = Design::default();
+        design.set("board.limit4", "5 ± 1 A");
+        design.set("second.fitted", "yes");
+        let checked = check(&design).expect("sound");
+        let of = |setup: &Setup| {
+            let board = setup.board.as_ref().expect("a board");
+            let Threshold::Sense(sense) = board.stages[0].threshold else { panic!("{board:?}") };
+            let Threshold::Current(amps) = board.stages[2].threshold else { panic!("{board:?}") };
+            let od = board.over_discharge.expect("over-discharge");
+            let delay = board.stages[0].delay;
+            [sense.0, delay.0, amps.0, board.on_resistance.at(3.8), od.threshold.0, od.delay.0]
+        };
+        let close = |got: [f64; 6], want: [f64; 6]| {
+            assert!(got.iter().zip(want).all(|(g, w)| (g - w).abs() < 1e-12), "{got:?}, not {want:?}");
+        };
+        close(of(&checked.nominal), [0.15, 0.01, 5.0, 0.05, 2.4, 0.04]);
+        close(of(&checked.low), [0.12, 0.006, 4.0, 0.06, 2.5, 0.02]);
+        close(of(&checked.high), [0.18, 0.014, 6.0, 0.04, 2.3, 0.06]);
+        assert_eq!((&checked.low.cell, &checked.low.path), (&checked.nominal.cell, &checked.nominal.path));
+        let pair = |setup: &Setup| setup.second_protector.as_ref().expect("fitted").on_resistance.at(3.8);
+        assert!(pair(&checked.low) > pair(&checked.nominal) && pair(&checked.nominal) > pair(&checked.high));
+    }
+
+    #[test]
+    fn exact_a_fuse_is_ahead_of_the_board() {
+        let mut design = Design::default();
+        let without = check(&design).expect("sound");
+        design.set("leads.fuse", "lag");
+        design.set("leads.fuse_rating", "3.15 A");
+        design.set("leads.fuse_cold", "23.1 mΩ ± 10 %");
+        let with = check(&design).expect("sound");
+        let more = |a: &Setup, b: &Setup| a.path.ahead.0 - b.path.ahead.0;
+        assert!((more(&with.nominal, &without.nominal) - 23.1e-3).abs() < 1e-12);
+        assert!((more(&with.weak, &without.weak) - 25.41e-3).abs() < 1e-12);
+        assert_eq!(with.nominal.path.after, without.nominal.path.after);
+        let fuse = with.ratings.fuse.expect("a fuse");
+        assert_eq!((fuse.rating, fuse.kind, fuse.breaking), (Amps(3.15), FuseKind::TimeLag, None));
+        assert_eq!(without.ratings.fuse, None);
+    }
+
+    /// What the fields leave empty comes from the kind of cell, the fuse and the charger themselves.
+    #[test]
+    fn exact_empty_ratings_take_what_their_help_says() {
+        let mut design = Design::default();
+        for (key, text) in [
+            ("cell.chemistry", "lfp_cylinder"),
+            ("charger.fitted", "yes"),
+            ("charger.current", "500 mA"),
+            ("charger.float", "3.6 V"),
+            ("leads.fuse", "ptc"),
+            ("leads.fuse_rating", "3 A"),
+            ("leads.insulation", "silicone"),
+            ("use.ambient", "-5"),
+            ("use.storage", "12 h"),
+        ] {
+            design.set(key, text);
+        }
+        let ratings = check(&design).expect("sound").ratings;
+        assert_eq!((ratings.cell.voltage_min, ratings.cell.voltage_max), (Volts(2.0), Volts(3.65)));
+        assert_eq!((ratings.cell.it, ratings.cell.pulse), (Amps(1.1), None));
+        let charger = ratings.charger.expect("fitted");
+        assert_eq!((charger.termination, charger.trickle), (Amps(0.05), Amps(0.05)));
+        assert!((charger.float.high - 3.654).abs() < 1e-12 && (charger.current.low - 0.45).abs() < 1e-12);
+        let ptc = FuseKind::Ptc { trip: Amps(6.0), time: Seconds(20.0), at: Amps(15.0) };
+        assert_eq!(ratings.fuse.expect("a PTC").kind, ptc);
+        assert_eq!(ratings.leads.len(), 2);
+        assert_eq!((ratings.leads[0].initial, ratings.leads[0].last), (Celsius(180.0), Celsius(350.0)));
+        assert!((ratings.leads[0].ohm_per_m_20 - 0.026).abs() < 1e-12, "class 5, 0.75 mm²: 26.0 Ω/km");
+        assert_eq!((ratings.keeping.cold, ratings.keeping.storage_days), (Celsius(-5.0), 0.5));
+    }
+
+    #[test]
+    fn exact_fields_that_contradict_each_other_are_faults() {
+        for (entries, key) in [
+            (&[("cell.continuous", "5 A"), ("cell.pulse", "4 A")][..], "cell.pulse"),
+            (&[("cell.voltage_min", "4.3 V")], "cell.voltage_min"),
+            (&[("cell.voltage_max", "2.9 V")], "cell.voltage_max"),
+            (&[("cell.charge_cold", "50")], "cell.charge_cold"),
+            (&[("board.oc", "2.4 V")], "board.oc"),
+            (&[("leads.fuse", "i2t")], "leads.fuse_i2t"),
+            (&[("leads.fuse", "ptc"), ("leads.ptc_trip", "3 A")], "leads.ptc_trip"),
+            (&[("leads.fuse", "ptc"), ("leads.ptc_at", "5 A")], "leads.ptc_at"),
+            (&[("charger.fitted", "yes"), ("charger.termination", "0.95 A")], "charger.termination"),
+            (&[("charger.fitted", "yes"), ("charger.trickle_below", "4.2 V")], "charger.trickle_below"),
+            (&[("charger.fitted", "yes"), ("charger.supply", "4.2 V")], "charger.supply"),
+            (&[("charger.fitted", "yes"), ("charger.cold", "30")], "charger.cold"),
+            (&[("load.strike", "3.05 V")], "load.hold"),
+            (&[("load.start", "3 V")], "load.start"),
+        ] {
+            let mut design = Design::default();
+            for (k, text) in entries {
+                assert!(design.set(k, text), "{k}");
+            }
+            let faults = check(&design).expect_err(key);
+            let keys: Vec<&str> = faults.iter().map(|f| f.key).collect();
+            assert_eq!(keys, [key], "{faults:?}");
+        }
     }
 }

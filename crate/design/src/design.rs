@@ -1,6 +1,6 @@
 //! A design as it is entered: a text for every field, a name and a note.
 
-use crate::catalogue::{FIELDS, Field, When};
+use crate::catalogue::{self, FIELDS, Field, When};
 
 /// What is entered.
 #[derive(Debug, Clone, PartialEq)]
@@ -32,11 +32,14 @@ impl Default for Design {
 impl Design {
     /// The worked example: a pocket igniter for lighting bee smokers, all parts invented.
     pub fn demo() -> Self {
-        Self {
+        let mut design = Self {
             name: "Smoker igniter, pocket size".into(),
             note: "Lights the fuel of a bee smoker in the wind. All parts are invented.".into(),
             ..Self::default()
-        }
+        };
+        design.set("cell.charge", "1.1 A");
+        design.set("charger.fitted", "yes");
+        design
     }
 
     /// The text of a field; empty for a key that is none.
@@ -59,7 +62,10 @@ impl Design {
     pub fn matters(&self, field: &Field) -> bool {
         match field.when {
             When::Always => true,
-            When::Is(key, values) => values.contains(&self.get(key)),
+            When::Is(key, values) => {
+                values.contains(&self.get(key))
+                    && catalogue::field(key).is_some_and(|chooser| self.matters(chooser))
+            }
         }
     }
 

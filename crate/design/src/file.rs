@@ -160,6 +160,7 @@ fn part_key(part: Part) -> &'static str {
         Part::Leads => "leads",
         Part::Load => "load",
         Part::Use => "use",
+        Part::Charger => "charger",
     }
 }
 

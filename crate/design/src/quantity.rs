@@ -38,6 +38,12 @@ pub enum Unit {
     PerKelvin,
     /// V/K
     VoltPerKelvin,
+    /// A²·s
+    SquareAmpereSecond,
+    /// Hz
+    Hertz,
+    /// H
+    Henry,
     /// A plain ratio; `%` is accepted
     Ratio,
     /// A whole number
@@ -63,6 +69,11 @@ fn spellings(unit: Unit) -> &'static [(&'static str, f64)] {
         Unit::Activation => &[("J/mol", 1.0)],
         Unit::PerKelvin => &[("1/K", 1.0), ("/K", 1.0), ("%/K", 0.01), ("%/°C", 0.01)],
         Unit::VoltPerKelvin => &[("V/K", 1.0)],
+        Unit::SquareAmpereSecond => {
+            &[("A²s", 1.0), ("A²·s", 1.0), ("A² s", 1.0), ("A2s", 1.0), ("A^2s", 1.0), ("A^2 s", 1.0)]
+        }
+        Unit::Hertz => &[("Hz", 1.0), ("hertz", 1.0)],
+        Unit::Henry => &[("H", 1.0)],
         Unit::Ratio => &[("", 1.0), ("%", 0.01), ("×", 1.0), ("x", 1.0)],
         Unit::Count => &[("", 1.0)],
     }
@@ -87,12 +98,15 @@ fn noun(unit: Unit) -> &'static str {
         Unit::Activation => "an activation energy",
         Unit::PerKelvin => "a temperature coefficient",
         Unit::VoltPerKelvin => "a voltage per kelvin",
+        Unit::SquareAmpereSecond => "an I²t",
+        Unit::Hertz => "a frequency",
+        Unit::Henry => "an inductance",
         Unit::Ratio => "a ratio",
         Unit::Count => "a whole number",
     }
 }
 
-const UNITS: [Unit; 16] = [
+const UNITS: [Unit; 19] = [
     Unit::Volt,
     Unit::Ampere,
     Unit::Ohm,
@@ -109,6 +123,9 @@ const UNITS: [Unit; 16] = [
     Unit::Activation,
     Unit::PerKelvin,
     Unit::VoltPerKelvin,
+    Unit::SquareAmpereSecond,
+    Unit::Hertz,
+    Unit::Henry,
 ];
 
 const PREFIXES: [(&str, f64); 9] = [
@@ -238,7 +255,15 @@ fn prefixed(unit: &str, of: Unit) -> Option<f64> {
     if let Some((_, worth)) = spellings(of).iter().find(|(name, _)| *name == unit) {
         return Some(*worth);
     }
-    if matches!(of, Unit::Celsius | Unit::Ratio | Unit::Count | Unit::Section | Unit::PerKelvin) {
+    if matches!(
+        of,
+        Unit::Celsius
+            | Unit::Ratio
+            | Unit::Count
+            | Unit::Section
+            | Unit::PerKelvin
+            | Unit::SquareAmpereSecond
+    ) {
         return None;
     }
     PREFIXES.iter().find_map(|(prefix, factor)| {
@@ -346,7 +371,8 @@ pub fn parse(text: &str, shown: &Shown) -> Result<f64, QuantityError> {
     } else if let Some(worth) = prefixed(unit, shown.unit) {
         worth
     } else if let Some((_, factor)) = PREFIXES.iter().find(|(p, _)| *p == unit && shown.unit != Unit::Metre) {
-        if matches!(shown.unit, Unit::Section | Unit::Celsius | Unit::Ratio | Unit::Count) {
+        let whole = [Unit::Section, Unit::Celsius, Unit::Ratio, Unit::Count, Unit::SquareAmpereSecond];
+        if whole.contains(&shown.unit) {
             return Err(other(&cleaned, unit, text, shown));
         }
         *factor

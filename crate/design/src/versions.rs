@@ -122,7 +122,58 @@ struct Step {
 const STEPS: [Step; VERSION as usize - 1] = [Step { added: SECOND, changed: &[] }];
 
 /// What version 2 brought.
-const SECOND: &[Added] = &[];
+const SECOND: &[Added] = &[
+    same("cell.pulse", ""),
+    same("cell.pulse_time", "10 s"),
+    same("cell.charge", ""),
+    same("cell.voltage_max", ""),
+    same("cell.voltage_min", ""),
+    same("cell.discharge_cold", "-20 °C"),
+    same("cell.discharge_hot", "60 °C"),
+    same("cell.charge_cold", "0 °C"),
+    same("cell.charge_hot", "45 °C"),
+    same("cell.mismatch", "0 V"),
+    Added { key: "board.oc", default: "4.3 ± 0.05 V", before: "" },
+    same("board.charge_sense", ""),
+    Added { key: "leads.insulation", default: "pvc", before: "unknown" },
+    same("leads.fuse", "none"),
+    same("leads.fuse_rating", "4 A"),
+    same("leads.fuse_cold", "17 mΩ"),
+    same("leads.fuse_i2t", ""),
+    same("leads.fuse_breaking", ""),
+    same("leads.ptc_trip", ""),
+    same("leads.ptc_time", "20 s"),
+    same("leads.ptc_at", ""),
+    same("leads.button_current", ""),
+    same("leads.button_voltage", ""),
+    same("leads.connector_current", ""),
+    same("leads.connector_voltage", ""),
+    same("load.output", ""),
+    same("load.output_capacitance", ""),
+    Added { key: "use.per_day", default: "20", before: "0" },
+    Added { key: "use.storage", default: "180 d", before: "0 d" },
+    Added { key: "use.held", default: "1 h", before: "0 h" },
+    Added { key: "use.cold", default: "0 °C", before: "" },
+    Added { key: "use.case", default: "closed", before: "open" },
+    same("charger.fitted", "no"),
+    same("charger.current", "1 A"),
+    same("charger.float", "4.2 V"),
+    same("charger.termination", ""),
+    same("charger.trickle_below", "2.9 V"),
+    same("charger.trickle", ""),
+    same("charger.supply", "5 V"),
+    same("charger.load", "0 mA"),
+    same("charger.cold", "10 °C"),
+    same("charger.hot", "30 °C"),
+    same("charger.power", ""),
+    Added { key: "second.oc", default: "4.28 ± 0.05 V", before: "" },
+    same("second.charge_sense", ""),
+];
+
+/// A field whose default leaves an older design as it was.
+const fn same(key: &'static str, default: &'static str) -> Added {
+    Added { key, default, before: default }
+}
 
 /// Why the entries of a stored design are refused.
 #[derive(Debug, Clone, PartialEq, Eq)]

@@ -23,12 +23,13 @@ fn part_markup(design: &Design, part: Part, name: &str) -> String {
     let (plain, folded) = (rows(true), rows(false));
     let heading = format!("<h2>{name}</h2>");
     let more = match part {
-        Part::Cell => "Age, parallel cells, curves, heat",
-        Part::Board => "More limits, over-discharge, switch",
+        Part::Cell => "Age, parallel cells, ratings, curves, heat",
+        Part::Board => "More limits, over-discharge and over-charge, switch",
         Part::Second => "Fitted, and with what",
-        Part::Leads => "Conductor and joints",
-        Part::Load => "Start, surge, capacitor, ripple",
-        Part::Use => "Bounds",
+        Part::Leads => "Conductor, joints, fuse, ratings",
+        Part::Load => "Start, surge, capacitor, ripple, output",
+        Part::Use => "Storage, cold, bounds",
+        Part::Charger => "Voltage, trickle, temperatures",
     };
     let folded = if folded.is_empty() {
         folded
