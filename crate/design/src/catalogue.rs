@@ -105,6 +105,9 @@ const MA: Shown = shown(Unit::Ampere, "mA", 1e-3);
 const A2S: Shown = shown(Unit::SquareAmpereSecond, "A²s", 1.0);
 const KV: Shown = shown(Unit::Volt, "kV", 1e3);
 const NF: Shown = shown(Unit::Farad, "nF", 1e-9);
+const UH: Shown = shown(Unit::Henry, "µH", 1e-6);
+const KHZ: Shown = shown(Unit::Hertz, "kHz", 1e3);
+const MM: Shown = shown(Unit::Metre, "mm", 1e-3);
 const HOURS: Shown = shown(Unit::Second, "h", 3600.0);
 const DAYS: Shown = shown(Unit::Second, "d", 86_400.0);
 const UA: Shown = shown(Unit::Ampere, "µA", 1e-6);
@@ -175,6 +178,8 @@ const BRANCHES: When = When::Is("cell.route", &["branches"]);
 const FUSED: When = When::Is("leads.fuse", &["quick", "lag", "i2t", "ptc"]);
 const MELTS: When = When::Is("leads.fuse", &["quick", "lag", "i2t"]);
 const PTC: When = When::Is("leads.fuse", &["ptc"]);
+const MEASURED: When = When::Is("load.known", &["measured"]);
+const ESTIMATED: When = When::Is("load.known", &["estimated"]);
 const CHARGER: When = When::Is("charger.fitted", &["yes"]);
 
 const YES_NO: Kind = Kind::Choice(&[("no", "none"), ("yes", "fitted")]);
@@ -298,7 +303,25 @@ pub const FIELDS: &[Field] = fields![
     "load.current" Load plain When::Is("load.law", &["current"]), "Current when lit", needs(A, 0.001, 500.0), "2.5 A", "While the arc is on.";
     "load.power" Load plain When::Is("load.law", &["power"]), "Power when lit", needs(W, 0.001, 2000.0), "9 W", "While the arc is on.";
     "load.resistance" Load plain When::Is("load.law", &["resistance"]), "Resistance when lit", needs(OHM, 0.001, 1e5), "1.4 Ω", "While the arc is on.";
-    "load.strike" Load plain ALWAYS, "Strikes at", about(V, 0.3, 60.0, 0.02), "3.3 V", "Lowest voltage at the load's terminals at which the arc ignites. Turn the bench supply up slowly.";
+    "load.known" Load plain ALWAYS, "Strike voltage known from", Kind::Choice(&[
+        ("measured", "the bench supply"), ("estimated", "its windings (an estimate)"),
+    ]), "measured", "For a resonant push-pull driver that nobody has measured yet, its turns and gap give a band. Measure it before you build.";
+    "load.strike" Load plain MEASURED, "Strikes at", about(V, 0.3, 60.0, 0.02), "3.3 V", "Lowest voltage at the load's terminals at which the arc ignites. Turn the bench supply up slowly.";
+    "load.primary" Load plain ESTIMATED, "Primary turns, both halves", needs(COUNT, 1.0, 1000.0), "4", "Of the whole primary: 2 + 2 are 4. Count them.";
+    "load.secondary" Load plain ESTIMATED, "Secondary turns", needs(COUNT, 1.0, 100_000.0), "600", "From the transformer's description, or counted when it is wound.";
+    "load.gap" Load plain ESTIMATED, "Gap", needs(MM, 1e-4, 20e-3), "1.5 mm", "Shortest way through the air between the electrodes.";
+    "load.electrodes" Load folded ESTIMATED, "Electrodes", Kind::Choice(&[
+        ("unknown", "not known"), ("points", "points or thin wires"), ("smooth", "large and smooth"),
+    ]), "points", "Points break down at a fraction of what smooth electrodes take. Not known: from one to the other.";
+    "load.altitude" Load folded ESTIMATED, "Altitude", needs(M, -400.0, 6000.0), "0 m", "Above the sea. Thin air breaks down sooner.";
+    "load.tank" Load folded ESTIMATED, "Resonance known from", Kind::Choice(&[
+        ("unknown", "not known"), ("values", "capacitance and inductance"),
+        ("frequencies", "the frequency with and without the capacitor"),
+    ]), "unknown", "Gives the frequency and the current in the tank's capacitors; the strike voltage does not need it.";
+    "load.tank_capacitance" Load folded When::Is("load.tank", &["values", "frequencies"]), "Tank capacitor", may(NF, 1e-12, 1e-3), "", "Over the whole primary; printed on it. Several in parallel add up.";
+    "load.tank_inductance" Load folded When::Is("load.tank", &["values"]), "Primary inductance", may(UH, 1e-9, 1.0), "", "Of the whole primary, secondary open; with an LCR meter.";
+    "load.tank_alone" Load folded When::Is("load.tank", &["frequencies"]), "Frequency without the capacitor", may(KHZ, 1e2, 1e8), "", "Resonance of the primary by itself: signal generator through a large resistor, and an oscilloscope; never with the driver running.";
+    "load.tank_with" Load folded When::Is("load.tank", &["frequencies"]), "Frequency with it", may(KHZ, 1e2, 1e8), "", "The same with the tank capacitor connected.";
     "load.hold" Load plain ALWAYS, "Holds down to", needs(V, 0.2, 60.0), "3 V", "Lowest voltage at which a lit arc stays. Below the strike voltage.";
     "load.start" Load folded ALWAYS, "Runs from", needs(V, 0.1, 60.0), "2.4 V", "Its oscillator runs from here. Below the hold voltage.";
     "load.strike_time" Load folded ALWAYS, "Time to strike", needs(MS, 1e-5, 100.0), "2 ms", "How long the strike voltage must stand.";

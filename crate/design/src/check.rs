@@ -3,6 +3,7 @@
 //! Setups come out: nominal parts, weak ones with every tolerance at its unfavourable end, and nominal ones whose
 //! protectors trip as early, or as late, as they may. Beside them stand the ratings.
 
+mod estimate;
 mod ratings;
 
 use strikeline_core::board::{Board, OverDischarge, Release, SensePoint, Stage, Threshold};
@@ -18,6 +19,8 @@ use crate::catalogue::{Kind, field};
 use crate::design::Design;
 use crate::quantity::{self, Shown, Toleranced};
 use crate::shipped;
+
+pub use estimate::{Estimate, Tank};
 
 /// What is wrong with one field.
 #[derive(Debug, Clone, PartialEq)]
@@ -42,6 +45,8 @@ pub struct Checked {
     pub high: Setup,
     /// What the parts are rated for and what surrounds them.
     pub ratings: Ratings,
+    /// Where the strike voltage is an estimate: what it rests on.
+    pub estimate: Option<Estimate>,
 }
 
 /// A protector as its tolerances allow.
@@ -206,9 +211,13 @@ impl Reader<'_> {
         let board = self.board();
         let second = if self.choice("second.fitted") == "yes" { Some(self.second()) } else { None };
         let wiring = self.wiring();
-        let loads = self.load();
         let supply = self.value("board.supply");
         let usage = self.usage(if arrangement == Arrangement::NoBoard { Some(0.0) } else { supply });
+        let estimated = self.choice("load.known") == "estimated";
+        let estimate = if estimated { self.estimate(usage.as_ref().map(|u| u.ambient)) } else { None };
+        let strike =
+            if estimated { estimate.map(|e| e.toleranced()) } else { self.toleranced("load.strike") };
+        let loads = self.load(strike);
         let button = self.contact("leads.button_current", "leads.button_voltage");
         let connector = self.contact("leads.connector_current", "leads.connector_voltage");
         let output = self.output();
@@ -254,9 +263,9 @@ impl Reader<'_> {
             connector,
             output,
             keeping: keeping?,
-            load_estimated: false,
+            load_estimated: estimated,
         };
-        Some(Checked { nominal, weak, low, high, ratings })
+        Some(Checked { nominal, weak, low, high, ratings, estimate })
     }
 
     fn cell(&mut self) -> Option<(Cell, Cell, CellRatings)> {
@@ -539,12 +548,12 @@ impl Reader<'_> {
         Some(Wiring { nominal, weak, fuse, leads })
     }
 
-    fn load(&mut self) -> Option<(Load, Load)> {
+    /// - `strike`: as entered, or as estimated.
+    fn load(&mut self, strike: Option<Toleranced>) -> Option<(Load, Load)> {
         let lit = self.lit();
         let keys =
             ["load.start", "load.hold", "load.strike_time", "load.unlit", "load.surge", "load.surge_time"];
         let [start, hold, strike_time, unlit, surge, surge_time] = keys.map(|key| self.value(key));
-        let strike = self.toleranced("load.strike");
         let stall = self.value("load.stall");
         let capacitance = self.value("load.capacitance");
         let esr = self.value("load.esr");
@@ -552,7 +561,7 @@ impl Reader<'_> {
         if let (Some(strike), Some(hold)) = (strike, hold)
             && strike.min <= hold
         {
-            let least = strike.min;
+            let least = (strike.min * 1e4).floor() / 1e4;
             let message =
                 format!("{hold} V is not below the strike voltage, {least} V at its least; accepted is less");
             self.fault("load.hold", message);
@@ -816,5 +825,58 @@ mod tests {
             let keys: Vec<&str> = faults.iter().map(|f| f.key).collect();
             assert_eq!(keys, [key], "{faults:?}");
         }
+    }
+
+    #[test]
+    fn exact_an_estimate_is_the_strike_voltage_with_its_spread() {
+        let mut design = Design::default();
+        design.set("load.strike", "no number");
+        design.set("load.known", "estimated");
+        design.set("load.electrodes", "unknown");
+        let checked = check(&design).expect("the measured strike voltage is not asked for");
+        let estimate = checked.estimate.expect("an estimate");
+        assert!(checked.ratings.load_estimated);
+        assert_eq!(checked.weak.load.strike, estimate.strike.high);
+        let middle = checked.nominal.load.strike.0;
+        assert!((middle * middle - estimate.strike.low.0 * estimate.strike.high.0).abs() < 1e-9);
+        // 1.5 mm at the sea and 20 °C: 2.44·pd + 2.12·√pd with pd = 1.01325·1.5; by N_s·π/N_p = 600·π/4.
+        let pd = 1.01325 * 1.5_f64;
+        let uniform = 1e3 * (2.44 * pd + 2.12 * pd.sqrt()) / (150.0 * std::f64::consts::PI);
+        assert!(
+            (estimate.strike.high.0 - uniform).abs() < 1e-3 * uniform,
+            "{estimate:?} against {uniform} V"
+        );
+        design.set("load.known", "measured");
+        design.set("load.strike", "3.3 V");
+        let measured = check(&design).expect("sound");
+        assert!(!measured.ratings.load_estimated && measured.estimate.is_none());
+    }
+
+    /// A coil of 320 kHz alone and 76 kHz with 220 nF: 13.151 nF and 18.809 µH, by Thomson's formula.
+    #[test]
+    fn exact_a_tank_from_two_frequencies() {
+        let mut design = Design::default();
+        for (key, text) in [
+            ("load.known", "estimated"),
+            ("load.tank", "frequencies"),
+            ("load.tank_capacitance", "220 nF"),
+            ("load.tank_alone", "320 kHz"),
+            ("load.tank_with", "76"),
+        ] {
+            assert!(design.set(key, text), "{key}");
+        }
+        let estimate = check(&design).expect("sound").estimate.expect("an estimate");
+        let tank = estimate.tank.expect("a tank");
+        assert!((tank.inductance.0 - 18.809e-6).abs() < 1e-9, "{tank:?}");
+        assert!((tank.capacitance.0 - 233.151e-9).abs() < 1e-12, "{tank:?}");
+        assert!((tank.frequency.0 - 76e3).abs() < 1e-9);
+        assert!(estimate.tank_current(Volts(3.3)).expect("a tank").0 > 0.0);
+        design.set("load.tank_with", "330 kHz");
+        let faults = check(&design).expect_err("more with the capacitor");
+        assert_eq!(faults[0].key, "load.tank_with");
+        design.set("load.gap", "20 mm");
+        design.set("load.secondary", "20");
+        let faults = check(&design).expect_err("too far");
+        assert!(faults.iter().any(|f| f.key == "load.gap"), "{faults:?}");
     }
 }
