@@ -3,11 +3,13 @@
 //! No browser, clock, thread, file, text format or random source lives here.
 //! Discharge current is positive; SI inside; temperatures in °C at the edge.
 
+pub mod arrangements;
 pub mod board;
 pub mod cell;
 pub mod charge;
 mod circuit;
 pub mod driver;
+pub mod hazard;
 pub mod load;
 pub mod math;
 pub mod press;

@@ -4,6 +4,7 @@
 //! with more than half of the charge left, fails: that is the igniter that works for ten presses.
 //! The same rule over the parts' weak corner tells holds from borderline.
 
+use crate::hazard::{Hazards, Level};
 use crate::report::{ChargeEnd, ChargeReport, NotFull, Sample};
 use crate::setup::Setup;
 use crate::units::Volts;
@@ -64,6 +65,23 @@ pub fn judge(nominal: &ChargeReport, weak: &ChargeReport) -> Verdict {
         return Verdict { word: Word::Borderline, parts: Parts::Weak, reason: weak_reason };
     }
     Verdict { word: Word::Holds, parts: Parts::Nominal, reason }
+}
+
+/// The verdict with the hazards weighed in.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Overall {
+    /// In a word: that of `works`, but a stop-level hazard is a failure.
+    pub word: Word,
+    /// Whether it works, and why.
+    pub works: Verdict,
+    /// How many hazards are at stop level; where there are any, they decide.
+    pub stops: usize,
+}
+
+/// A design that works is still not good enough with a stop-level hazard.
+pub fn weigh(works: Verdict, hazards: &Hazards) -> Overall {
+    let stops = hazards.findings.iter().filter(|f| f.level == Level::Stop).count();
+    Overall { word: if stops > 0 { Word::Fails } else { works.word }, works, stops }
 }
 
 fn look(charge: &ChargeReport) -> Reason {

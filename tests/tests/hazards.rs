@@ -1,0 +1,921 @@
+//! The hazards: for every threshold a design just inside and one just outside it, and published figures against the
+//! functions that the checks use.
+//!
+//! The designs are flat ones, so that currents and temperatures are formulas. A side is a ten-thousandth from the
+//! threshold, or what the test says.
+
+use strikeline_core::arrangements::{self, By, Corners, Given};
+use strikeline_core::board::{Board, OverDischarge, Threshold};
+use strikeline_core::charge;
+use strikeline_core::hazard::{
+    self, Case, Circumstances, ContactPart, Hazards, Kind, Level, NotJudged, StoredTier, hazards,
+};
+use strikeline_core::load::LitDraw;
+use strikeline_core::math::{Monotone, Polyline};
+use strikeline_core::press::PressStart;
+use strikeline_core::ratings::{
+    Band, CellRatings, Charger, Contact, Fuse, FuseKind, Keeping, LeadRating, Output, OverCharge, Ratings,
+};
+use strikeline_core::report::{Limit, Protector};
+use strikeline_core::setup::{Arrangement, Setup};
+use strikeline_core::units::{AmpHours, Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
+use strikeline_core::verdict::{self, Word};
+use strikeline_core::wiring;
+use strikeline_tests::flat;
+
+/// A design with everything that the checks look at.
+#[derive(Clone)]
+struct Design {
+    nominal: Setup,
+    early: Option<Board>,
+    late: Option<Board>,
+    ratings: Ratings,
+    /// Whether a charge at the coldest temperature is given.
+    cold: bool,
+    fuse_resistance: Option<Ohms>,
+}
+
+/// 3.7 V behind 50 mΩ, a 50 mΩ board that trips at 3 A and at 2.4 V, 2 A for 0.1 s: nothing is wrong with it.
+fn sound() -> Design {
+    let mut cell = flat::cell(Volts(3.7), Ohms(0.05));
+    cell.capacity = AmpHours(2.8);
+    let mut nominal = flat::with_board(
+        flat::setup(cell, Ohms(0.0), flat::load(LitDraw::Current(Amps(2.0))), Seconds(0.1)),
+        board(),
+    );
+    nominal.usage.max_presses = 2;
+    let ratings = Ratings {
+        cell: CellRatings {
+            it: Amps(2.8),
+            continuous: Some(Amps(5.0)),
+            pulse: Some(Amps(10.0)),
+            pulse_time: Seconds(1.0),
+            charge: Some(Amps(1.4)),
+            voltage_max: Volts(4.2),
+            voltage_min: Volts(2.4),
+            discharge_window: (Celsius(-20.0), Celsius(60.0)),
+            charge_window: (Celsius(0.0), Celsius(45.0)),
+        },
+        charger: Some(Charger {
+            current: Band { low: 0.9, typical: 1.0, high: 1.1 },
+            float: Band { low: 4.137, typical: 4.2, high: 4.2 },
+            termination: Amps(0.1),
+            trickle_below: Volts(2.9),
+            trickle: Amps(0.1),
+            input: Volts(5.0),
+            load_while_charging: Amps(0.0),
+            ambient: (Celsius(5.0), Celsius(35.0)),
+            power_limit: Some(Watts(3.0)),
+        }),
+        board_over_charge: Some(OverCharge {
+            threshold: Band { low: 4.25, typical: 4.3, high: 4.35 },
+            charge_sense: None,
+        }),
+        second_over_charge: None,
+        fuse: None,
+        leads: vec![lead(0.75)],
+        button: Contact { current: Some(Amps(50.0)), voltage: Some(Volts(12.0)) },
+        connector: Contact { current: Some(Amps(50.0)), voltage: Some(Volts(12.0)) },
+        output: Output { voltage: Some(Volts(12.0)), capacitance: None },
+        keeping: Keeping {
+            presses_per_day: 10.0,
+            storage_days: 90.0,
+            held_hours: 0.0,
+            cold: flat::ROOM,
+            closed_case: false,
+            parallel_mismatch: Volts(0.0),
+        },
+        load_estimated: false,
+    };
+    Design { nominal, early: None, late: None, ratings, cold: false, fuse_resistance: None }
+}
+
+fn board() -> Board {
+    let mut board = flat::board(Ohms(0.05), vec![flat::stage("over_current", Volts(0.15), Seconds(0.01))]);
+    board.over_discharge = Some(OverDischarge { threshold: Volts(2.4), delay: Seconds(0.04) });
+    // So small that it stays cold, but known.
+    board.thermal_k_per_w = 1e-6;
+    board
+}
+
+/// The same board with another threshold.
+fn board_at(volts: f64) -> Board {
+    let mut board = board();
+    board.stages[0].threshold = Threshold::Sense(Volts(volts));
+    board
+}
+
+/// Flexible copper in PVC, 0.1 m one way.
+fn lead(area_mm2: f64) -> LeadRating {
+    LeadRating {
+        cell_side: true,
+        area_mm2,
+        length_m: 0.1,
+        ohm_per_m_20: wiring::per_km_20(area_mm2, wiring::Conductor::Flexible) * 1e-3,
+        initial: Celsius(70.0),
+        last: Celsius(160.0),
+        continuous: Celsius(70.0),
+    }
+}
+
+fn quick(rating: f64) -> Fuse {
+    Fuse { rating: Amps(rating), kind: FuseKind::Quick, breaking: Some(Amps(1500.0)) }
+}
+
+impl Design {
+    fn look(&self) -> Hazards {
+        let charged = charge::run(&self.nominal);
+        let cold = self.cold.then(|| {
+            let mut setup = self.nominal.clone();
+            setup.usage.ambient = self.ratings.keeping.cold;
+            charge::run(&setup)
+        });
+        hazards(&Circumstances {
+            nominal: &self.nominal,
+            weak: &self.nominal,
+            board: Corners { early: self.early.as_ref(), late: self.late.as_ref() },
+            second: Corners::default(),
+            charge: &charged,
+            weak_charge: None,
+            cold_charge: cold.as_ref(),
+            ratings: &self.ratings,
+            fuse_resistance: self.fuse_resistance,
+        })
+    }
+
+    fn draw(&mut self, amps: f64) {
+        self.nominal.load.lit = LitDraw::Current(Amps(amps));
+    }
+
+    fn charger(&mut self) -> &mut Charger {
+        self.ratings.charger.as_mut().expect("a sound design has one")
+    }
+
+    fn no_board(&mut self) {
+        self.nominal.arrangement = Arrangement::NoBoard;
+    }
+
+    fn over_discharge(&mut self, od: Option<OverDischarge>) {
+        self.nominal.board.as_mut().expect("a sound design has one").over_discharge = od;
+    }
+}
+
+fn level(found: &Hazards, of: impl Fn(&Kind) -> bool) -> Option<Level> {
+    found.findings.iter().find(|f| of(&f.kind)).map(|f| f.level)
+}
+
+const NONE: Option<Level> = None;
+const NOTE: Option<Level> = Some(Level::Note);
+const LOOK: Option<Level> = Some(Level::Look);
+const STOP: Option<Level> = Some(Level::Stop);
+
+/// One parameter on two sides of a threshold.
+#[track_caller]
+fn edge(
+    what: &str,
+    of: impl Fn(&Kind) -> bool,
+    set: impl Fn(&mut Design, f64),
+    sides: [(f64, Option<Level>); 2],
+) {
+    for (value, want) in sides {
+        let mut design = sound();
+        set(&mut design, value);
+        let found = design.look();
+        let got = level(&found, &of);
+        assert_eq!(got, want, "{what} at {value}: {:?}", found.findings);
+    }
+}
+
+/// The two sides of `at`, a ten-thousandth away: below, above.
+fn around(at: f64, below: Option<Level>, above: Option<Level>) -> [(f64, Option<Level>); 2] {
+    [(at * (1.0 - 1e-4), below), (at * (1.0 + 1e-4), above)]
+}
+
+macro_rules! is {
+    ($kind:pat) => {
+        |kind: &Kind| matches!(kind, $kind)
+    };
+}
+
+#[test]
+fn exact_a_sound_design_has_notes_only() {
+    let found = sound().look();
+    let other: Vec<_> = found.findings.iter().filter(|f| f.level != Level::Note).collect();
+    assert!(other.is_empty(), "{other:?}");
+    assert!(!found.has_stop());
+    assert!(found.not_judged.is_empty(), "{:?}", found.not_judged);
+    assert!(found.checks_made >= 35, "{} checks", found.checks_made);
+    println!("{} checks", found.checks_made);
+}
+
+#[test]
+fn exact_nuisance_trip() {
+    let trip = is!(Kind::NuisanceTrip { .. });
+    edge("draw against a 3 A trip", trip, |d, i| d.draw(i), around(3.0, NONE, LOOK));
+    let banded = |d: &mut Design, i: f64| {
+        d.draw(i);
+        d.early = Some(board_at(0.12));
+        d.late = Some(board_at(0.18));
+    };
+    edge("draw against the band's lower end", trip, banded, around(2.4, NONE, LOOK));
+    let certain = is!(Kind::NuisanceTrip { certain: true, .. });
+    edge("draw against the band's upper end", certain, banded, around(3.6, NONE, LOOK));
+    let peaked = |d: &mut Design, i: f64| {
+        d.draw(i);
+        d.nominal.load.peak_factor = 1.5;
+    };
+    edge("peak draw", trip, peaked, around(2.0, NONE, LOOK));
+    let late = |d: &mut Design, delay: f64| {
+        d.draw(3.5);
+        d.nominal.board.as_mut().expect("a board").stages[0].delay = Seconds(delay);
+    };
+    edge("delay against the press", trip, late, [(0.0999, LOOK), (0.1001, NONE)]);
+    // 2 A + 5 A·exp(−t/τ) is above 3 A for τ·ln 5; the delay is 10 ms.
+    let surge = |d: &mut Design, tau: f64| {
+        d.nominal.load.surge = Amps(5.0);
+        d.nominal.load.surge_time = Seconds(tau);
+    };
+    let tau = 0.01 / 5.0_f64.ln();
+    edge("surge against the delay", trip, surge, [(0.998 * tau, NONE), (1.002 * tau, LOOK)]);
+    let mut design = sound();
+    banded(&mut design, 3.3);
+    let found = design.look();
+    let kind = found.findings.iter().map(|f| &f.kind).find(|k| trip(k)).expect("it trips");
+    let Kind::NuisanceTrip { limit, case, soc, draw, trip, certain } = kind else { panic!("{kind:?}") };
+    assert_eq!((*limit, *case), (Limit::Stage(Protector::Board, 0), Case::Ambient));
+    assert!(!certain && *soc == 1.0 && (draw.0 - 3.3).abs() < 1e-4, "{kind:?}");
+    for (got, want) in [(trip.low, 2.4), (trip.typical, 3.0), (trip.high, 3.6)] {
+        assert!((got - want).abs() < 1e-9, "{trip:?}");
+    }
+}
+
+#[test]
+fn exact_nuisance_trip_in_the_cold_alone() {
+    // The draw is a resistance: 2.9 A warm; a cell whose voltage rises in the cold by 1 mV/K gives more.
+    let design = |cold: f64| {
+        let mut d = sound();
+        d.nominal.load.lit = LitDraw::Resistance(Ohms(3.7 / 2.9 - 0.1));
+        d.nominal.cell.entropy = Polyline::constant(-5e-3);
+        d.ratings.keeping.cold = Celsius(cold);
+        d.cold = true;
+        d
+    };
+    // (3.7 + 0.005·x)/(3.7/2.9) = 3 A at x = 25.517 K.
+    let cold = is!(Kind::NuisanceTrip { case: Case::Cold, .. });
+    let warm = is!(Kind::NuisanceTrip { case: Case::Ambient, .. });
+    let degrees = 25.0 - (3.0 * 3.7 / 2.9 - 3.7) / 5e-3;
+    for (t, want) in [(degrees + 0.05, NONE), (degrees - 0.05, LOOK)] {
+        let found = design(t).look();
+        assert_eq!(level(&found, cold), want, "{t} °C: {:?}", found.findings);
+        assert_eq!(level(&found, warm), NONE);
+    }
+    let mut without = design(0.0);
+    without.cold = false;
+    assert_eq!(without.look().not_judged, [NotJudged::ColdCharge]);
+}
+
+#[test]
+fn exact_board_never_trips_on_a_short() {
+    let never = is!(Kind::NeverTripsOnShort { .. });
+    // 3 A flow through 3.7/3 Ω, of which 0.1 Ω are cell and board.
+    let after = 3.7 / 3.0 - 0.1;
+    let leads = |d: &mut Design, ohm: f64| {
+        d.draw(1.0);
+        d.nominal.path.after = Ohms(ohm);
+    };
+    edge("leads too long", never, leads, around(after, NONE, STOP));
+    let late = |d: &mut Design, ohm: f64| {
+        leads(d, ohm);
+        d.late = Some(board_at(0.18));
+    };
+    edge("late board", never, late, around(3.7 / 3.6 - 0.1, NONE, STOP));
+    // A weak cell: its voltage breaks down, so over-discharge detection opens instead.
+    let weak = |d: &mut Design, ohm: f64| {
+        d.draw(0.5);
+        d.nominal.cell.r0 = Ohms(ohm);
+    };
+    edge("cell too weak", never, weak, around(3.7 / 3.0 - 0.05, NONE, LOOK));
+    // 3 A are twelve times 0.25 A: a quick fuse of that rating is open within 20 ms.
+    let fused = |d: &mut Design, rating: f64| {
+        leads(d, 1.001 * after);
+        d.ratings.fuse = Some(quick(rating));
+    };
+    // 2.1 times the rating opens within half an hour; the lead stands 3 A for 7439/9 s = 826 s.
+    edge("fuse instead", never, fused, [(0.25, LOOK), (1.45, STOP)]);
+}
+
+#[test]
+fn exact_short_without_protection() {
+    let bare = is!(Kind::ShortUnprotected { .. });
+    let mut d = sound();
+    assert_eq!(level(&d.look(), bare), NONE);
+    for arrangement in [Arrangement::LoadAtCell, Arrangement::SwitchBridged, Arrangement::NoBoard] {
+        d.nominal.arrangement = arrangement;
+        assert_eq!(level(&d.look(), bare), STOP);
+    }
+    // 37 A; the lead stands k²S²/I². Between 2.1 times (30 min) and 2.75 times (2 s) the gates are a line.
+    let k = 226.0 * (394.5_f64 / 304.5).ln().sqrt();
+    let limit = (k * 0.75 / 37.0).powi(2);
+    let part = (1800.0 / limit).ln() / (1800.0_f64 / 2.0).ln();
+    let multiple = 2.1 * (2.75_f64 / 2.1).powf(part);
+    let fused = |d: &mut Design, rating: f64| {
+        d.no_board();
+        d.nominal.path.after = Ohms(0.05);
+        d.ratings.fuse = Some(quick(rating));
+    };
+    edge("fuse against the lead", bare, fused, around(37.0 / multiple, LOOK, STOP));
+    let mut d = sound();
+    fused(&mut d, 5.0);
+    let found = d.look();
+    let Kind::ShortUnprotected { full, quick_fuse, fuse_clears, lead_limit, .. } =
+        &found.findings.iter().find(|f| bare(&f.kind)).expect("no board").kind
+    else {
+        panic!("{found:?}")
+    };
+    assert!((full.current.0 - 37.0).abs() < 1e-9);
+    assert!((lead_limit.expect("a lead").0 - limit).abs() < 1e-9);
+    // 7.4 times: between 0.3 s at 4 and 0.02 s at 10 times.
+    let clears = 0.3 * (0.02_f64 / 0.3).powf((7.4_f64 / 4.0).ln() / 2.5_f64.ln());
+    assert!((fuse_clears.expect("it clears").0 - clears).abs() < 1e-9);
+    let (least, most) = quick_fuse.expect("one fits");
+    assert!((least.0 - 2.0).abs() < 1e-4 && (most.0 - 37.0 / 2.75).abs() < 1e-9, "{least} to {most}");
+    // A draw above what such a fuse carries: none fits.
+    let fits = is!(Kind::ShortUnprotected { quick_fuse: Some(_), .. });
+    let drawn = |d: &mut Design, i: f64| {
+        fused(d, 5.0);
+        d.draw(i);
+    };
+    edge(
+        "draw against the largest fuse",
+        fits,
+        drawn,
+        around(37.0 / 2.75, STOP, NONE).map(|(i, l)| (i, l.map(|_| Level::Look))),
+    );
+}
+
+#[test]
+fn exact_what_an_arrangement_loses() {
+    let loses = is!(Kind::ArrangementLoses { .. });
+    let bare = is!(Kind::OverDischargeUnprotected { .. });
+    let mut d = sound();
+    assert_eq!((level(&d.look(), loses), level(&d.look(), bare)), (NONE, NONE));
+    d.over_discharge(None);
+    assert_eq!((level(&d.look(), loses), level(&d.look(), bare)), (NONE, STOP));
+    let mut d = sound();
+    d.no_board();
+    let found = d.look();
+    assert_eq!((level(&found, loses), level(&found, bare)), (STOP, STOP));
+    assert!(found.has_stop());
+    // A second protector in the wrap stays in the path.
+    d.nominal.second_protector = Some(board());
+    let found = d.look();
+    assert_eq!((level(&found, loses), level(&found, bare)), (LOOK, NONE));
+    let Kind::ArrangementLoses { left, through_board, .. } =
+        &found.findings.iter().find(|f| loses(&f.kind)).expect("no board").kind
+    else {
+        panic!("{found:?}")
+    };
+    assert_eq!((left.over_current, left.short_circuit, left.over_discharge, left.over_charge), (1, 1, 1, 0));
+    assert_eq!(
+        (through_board.over_current, through_board.over_discharge, through_board.over_charge),
+        (2, 2, 1)
+    );
+}
+
+/// Which layers the four arrangements keep: (arrangement, board in the load's path, board against over-charge).
+#[test]
+fn exact_layers_of_the_four_arrangements() {
+    let mut d = sound();
+    d.nominal.second_protector = Some(board());
+    d.ratings.second_over_charge = d.ratings.board_over_charge;
+    d.ratings.board_over_charge = Some(OverCharge {
+        threshold: Band { low: 4.25, typical: 4.3, high: 4.35 },
+        charge_sense: Some(Band { low: 0.08, typical: 0.1, high: 0.12 }),
+    });
+    d.ratings.fuse = Some(quick(5.0));
+    let charged = charge::run(&d.nominal);
+    let (early, late) = (board_at(0.12), board_at(0.18));
+    let given = Given {
+        setup: &d.nominal,
+        board: Corners { early: Some(&early), late: Some(&late) },
+        second: Corners::default(),
+        charge: &charged,
+        ratings: &d.ratings,
+    };
+    let of = |layers: &[arrangements::Layer]| layers.iter().map(|l| l.by).collect::<Vec<_>>();
+    use Protector::{Board as B, Second as S};
+    for (a, (load, charger)) in arrangements::compare(&given).iter().zip([
+        (true, true),
+        (false, true),
+        (false, false),
+        (false, false),
+    ]) {
+        let with = |board: bool, first: By, second: Vec<By>| {
+            board.then_some(first).into_iter().chain(second).collect::<Vec<_>>()
+        };
+        let currents = with(load, By::Stage(B, 0), vec![By::Stage(S, 0), By::Fuse]);
+        assert_eq!(of(&a.over_current), currents, "{:?}", a.arrangement);
+        assert_eq!(of(&a.short_circuit), currents, "{:?}", a.arrangement);
+        let low = with(load, By::OverDischarge(B), vec![By::OverDischarge(S)]);
+        assert_eq!(of(&a.over_discharge), low, "{:?}", a.arrangement);
+        let full = with(charger, By::OverCharge(B), vec![By::OverCharge(S)]);
+        assert_eq!(of(&a.over_charge), full, "{:?}", a.arrangement);
+        let back = with(charger, By::ChargeOverCurrent(B), vec![]);
+        assert_eq!(of(&a.charge_over_current), back, "{:?}", a.arrangement);
+        if load {
+            let band = a.over_current[0].full.expect("a stage has a current");
+            for (got, want) in [(band.low, 2.4), (band.typical, 3.0), (band.high, 3.6)] {
+                assert!((got - want).abs() < 1e-9, "{band:?}");
+            }
+            let back = a.charge_over_current[0].full.expect("a sense voltage has a current");
+            assert!((back.typical - 2.0).abs() < 1e-9, "{back:?}");
+        }
+        // 0.05 of cell, 0.05 of each pair that is in the path.
+        let total = 0.1 + if load { 0.05 } else { 0.0 };
+        let short = &a.short_full;
+        assert!((short.current.0 - 3.7 / total).abs() < 1e-9, "{:?}", a.arrangement);
+        let heat = short.cell + short.second + short.ahead + short.pair + short.after;
+        assert!((heat.0 - 3.7 * short.current.0).abs() < 1e-9, "all of the power is somewhere: {heat}");
+    }
+}
+
+#[test]
+fn exact_held_button() {
+    // U = 2 + 2z through R in all: z' = −U/(R·Q), so U = 4·exp(−2t/(R·Q)). The terminals are at U·10/10.5.
+    let mut d = sound();
+    d.no_board();
+    d.nominal.cell.ocv = Monotone::new(vec![0.0, 1.0], vec![2.0, 4.0]).expect("two points");
+    d.nominal.cell.r0 = Ohms(0.5);
+    d.nominal.load.unlit = Ohms(10.0);
+    let start = PressStart::relaxed(&d.nominal, 1.0, flat::ROOM);
+    let held = arrangements::held(&d.nominal, &start);
+    let rq = 10.5 * 2.8 * 3600.0;
+    let at = |volts: f64| 0.5 * rq * (4.0 / (volts * 1.05)).ln();
+    let near = |what: &str, got: Option<Seconds>, want: f64| {
+        let got = got.expect(what).0;
+        assert!((got / want - 1.0).abs() < 1e-5, "{what}: {got} s, by algebra {want} s");
+    };
+    near("3.0 V", held.to_3_0, at(3.0));
+    near("2.5 V", held.to_2_5, at(2.5));
+    near("2.0 V", held.to_2_0, at(2.0));
+    near("empty", held.to_empty, 0.5 * rq * 2.0_f64.ln());
+    assert!((held.draw.0 - 4.0 / 10.5).abs() < 1e-9 && held.opened.is_none());
+    // A board that opens at 2.8 V of supply, 40 ms later, keeps it from 2.5 V.
+    let mut board = board();
+    board.on_resistance = Polyline::constant(0.0);
+    board.over_discharge = Some(OverDischarge { threshold: Volts(2.8), delay: Seconds(0.04) });
+    let through = flat::with_board(d.nominal.clone(), board);
+    let held = arrangements::held(&through, &start);
+    let (protector, opened) = held.opened.expect("it opens");
+    assert_eq!(protector, Protector::Board);
+    assert!((opened.0 / (at(2.8) + 0.04) - 1.0).abs() < 1e-5, "{opened}");
+    near("3.0 V before it opens", held.to_3_0, at(3.0));
+    assert_eq!((held.to_2_5, held.to_2_0, held.to_empty), (None, None, None));
+    // Branches that have settled are resistance: 0.3 Ω behind 20 s and 0.2 Ω at once are 0.5 Ω to 10⁻³ of an hour.
+    let mut slow = d.nominal.clone();
+    slow.cell.r0 = Ohms(0.2);
+    slow.cell.branches =
+        vec![strikeline_core::cell::Branch { resistance: Ohms(0.3), time_constant: Seconds(20.0) }];
+    let held = arrangements::held(&slow, &start);
+    let got = held.to_3_0.expect("it falls").0;
+    assert!((got - at(3.0)).abs() < 20.0, "{got} s against {} s", at(3.0));
+}
+
+#[test]
+fn exact_held_button_is_what_a_long_press_gives() {
+    // The same fall by the press's own equations, with a cell that has everything.
+    let mut d = sound();
+    d.no_board();
+    let cell = &mut d.nominal.cell;
+    cell.capacity = AmpHours(0.8);
+    cell.ocv = Monotone::new(vec![0.0, 0.1, 0.5, 1.0], vec![2.0, 3.4, 3.7, 4.2]).expect("four points");
+    cell.r0_shape = Polyline::new(vec![0.0, 0.2, 1.0], vec![2.5, 1.2, 0.9]).expect("three points");
+    cell.r0_activation = 20_000.0;
+    cell.branches = vec![
+        strikeline_core::cell::Branch { resistance: Ohms(0.02), time_constant: Seconds(3.0) },
+        strikeline_core::cell::Branch { resistance: Ohms(0.04), time_constant: Seconds(60.0) },
+    ];
+    cell.heat_capacity_j_per_k = 20.0;
+    cell.cooling_w_per_k = 0.05;
+    d.nominal.load.unlit = Ohms(5.0);
+    d.nominal.load.strike = Volts(9.0);
+    d.nominal.load.hold = Volts(8.0);
+    d.nominal.usage.press = Seconds(20_000.0);
+    let start = PressStart::relaxed(&d.nominal, 0.4, flat::ROOM);
+    let held = arrangements::held(&d.nominal, &start);
+    let times = [held.to_3_0, held.to_2_5, held.to_2_0].map(|t| t.expect("it falls").0);
+    let options =
+        strikeline_core::press::PressOptions { samples: times.map(Seconds).to_vec(), ..Default::default() };
+    let report = strikeline_core::press::run(&d.nominal, &start, &options);
+    for (sample, want) in report.trace.iter().zip([3.0, 2.5, 2.0]) {
+        assert!((sample.cell.0 - want).abs() < 2e-3, "{} V at {} s, wanted {want}", sample.cell, sample.time);
+    }
+    assert_eq!(report.trace.len(), 3);
+}
+
+#[test]
+fn exact_over_charge() {
+    let none = is!(Kind::NoOverChargeLayer { .. });
+    let mut d = sound();
+    assert_eq!(level(&d.look(), none), NONE);
+    d.nominal.arrangement = Arrangement::LoadAtCell;
+    assert_eq!(level(&d.look(), none), NONE, "the charger still sits behind the board");
+    for arrangement in [Arrangement::SwitchBridged, Arrangement::NoBoard] {
+        d.nominal.arrangement = arrangement;
+        assert_eq!(level(&d.look(), none), STOP);
+    }
+    let float = is!(Kind::FloatAboveCell { .. });
+    edge("float tolerance", float, |d, v| d.charger().float.high = v, around(4.2, NONE, LOOK));
+    let typical = |d: &mut Design, v: f64| {
+        d.charger().float.typical = v;
+        d.charger().float.high = 4.3;
+    };
+    edge("float", float, typical, around(4.2, LOOK, STOP));
+    let high = is!(Kind::OverChargeTooHigh { .. });
+    let threshold = |d: &mut Design, v: f64| {
+        d.ratings.board_over_charge.as_mut().expect("a board").threshold.high = v;
+    };
+    edge("over-charge detection", high, threshold, around(4.35, NONE, STOP));
+}
+
+#[test]
+fn exact_charging() {
+    let above = is!(Kind::ChargeAboveLimit { .. });
+    let limit = |d: &mut Design, i: f64| d.ratings.cell.charge = Some(Amps(i));
+    edge("charge current by tolerance", above, limit, around(1.1, LOOK, NONE));
+    edge("charge current", above, limit, around(1.0, STOP, LOOK));
+    let two = |d: &mut Design, i: f64| {
+        limit(d, i);
+        d.nominal.cell.parallel = 2;
+    };
+    edge("charge current of each of two", above, two, around(0.55, LOOK, NONE));
+    let it = is!(Kind::ChargeAboveIt { .. });
+    edge("1 It, allowed by its maker", it, |d, i| d.ratings.cell.it = Amps(i), around(1.0, NOTE, NONE));
+    let unknown = |d: &mut Design, i: f64| {
+        d.ratings.cell.it = Amps(i);
+        d.ratings.cell.charge = None;
+    };
+    edge("1 It, maker's limit unknown", it, unknown, around(1.0, STOP, NONE));
+    let t = is!(Kind::ChargeTemperature { .. });
+    let cold = |d: &mut Design, t: f64| d.charger().ambient.0 = Celsius(t);
+    let hot = |d: &mut Design, t: f64| d.charger().ambient.1 = Celsius(t);
+    edge("charged in the cold", t, cold, [(0.0, NONE), (-0.01, STOP)]);
+    edge("charged in the heat", t, hot, [(45.0, NONE), (45.01, LOOK)]);
+    edge("charged above any window", t, hot, [(60.0, LOOK), (60.01, STOP)]);
+    let trickle = is!(Kind::TrickleAboveLimit { .. });
+    edge("trickle", trickle, |d, i| d.charger().trickle = Amps(i), around(0.28, NONE, LOOK));
+    let hot = is!(Kind::ChargerHot { .. });
+    let power = |d: &mut Design, p: f64| d.charger().power_limit = Some(Watts(p));
+    edge("charger's heat", hot, power, around(1.1 * 2.1, LOOK, NONE));
+    let closed = |d: &mut Design, p: f64| {
+        power(d, p);
+        d.ratings.keeping.closed_case = true;
+    };
+    edge("charger's heat in a closed case", hot, closed, around(2.0 * 1.1 * 2.1, LOOK, NONE));
+}
+
+#[test]
+fn exact_charging_while_loaded() {
+    let load = |d: &mut Design, i: f64| d.charger().load_while_charging = Amps(i);
+    let ends = is!(Kind::TerminationNeverReached { .. });
+    edge("termination", ends, load, [(0.0999, NONE), (0.1, LOOK)]);
+    let trickle = is!(Kind::TrickleNeverRecovers { .. });
+    edge("trickle", trickle, load, [(0.0999, NONE), (0.1, LOOK)]);
+    let bare = |d: &mut Design, i: f64| {
+        load(d, i);
+        d.over_discharge(None);
+    };
+    edge("trickle without over-discharge protection", trickle, bare, [(0.0999, NONE), (0.1, STOP)]);
+    let press = is!(Kind::PressWhileCharging { .. });
+    edge("press while charging", press, |d, i| d.charger().current.low = i, around(2.0, NOTE, NONE));
+}
+
+#[test]
+fn exact_stored_energy_and_high_voltage() {
+    let stored =
+        |tier: StoredTier| move |k: &Kind| matches!(k, Kind::StoredEnergy { tier: t, .. } if *t == tier);
+    let output = |volts: f64| {
+        move |d: &mut Design, c: f64| {
+            d.ratings.output = Output { voltage: Some(Volts(volts)), capacitance: Some(Farads(c)) };
+        }
+    };
+    edge("0.1 µF at 400 V", stored(StoredTier::Capacitance), output(400.0), around(1e-7, NONE, STOP));
+    edge("45 µC at 5 kV", stored(StoredTier::Charge), output(5e3), around(9e-9, NONE, STOP));
+    edge("45 µC at 15 kV", stored(StoredTier::Charge), output(15e3), around(3e-9, NONE, STOP));
+    edge("350 mJ at 20 kV", stored(StoredTier::Energy), output(20e3), around(1.75e-9, NONE, STOP));
+    let any = is!(Kind::StoredEnergy { .. });
+    edge("1 mF at 42.4 V", any, output(42.4), [(1e-3, NONE), (1e-2, NONE)]);
+    edge("1 mF at 42.5 V", any, output(42.5), [(1e-8, NONE), (1e-3, STOP)]);
+    let high = is!(Kind::HighVoltage { .. });
+    let volts = |d: &mut Design, v: f64| d.ratings.output.voltage = Some(Volts(v));
+    edge("high voltage", high, volts, around(42.4, NOTE, LOOK));
+    let mut d = sound();
+    d.ratings.output.voltage = None;
+    assert_eq!(level(&d.look(), high), LOOK);
+    assert_eq!(d.look().not_judged, [NotJudged::OutputVoltage]);
+    volts(&mut d, 1e4);
+    assert_eq!(d.look().not_judged, [NotJudged::OutputCapacitance]);
+}
+
+#[test]
+fn exact_cell_over_its_rating() {
+    let over = is!(Kind::CellOverRating { .. });
+    // Presses of 0.1 s without rest: the effective current is the draw.
+    let continuous = |d: &mut Design, i: f64| d.ratings.cell.continuous = Some(Amps(i));
+    edge("continuous", over, continuous, around(2.0, LOOK, NONE));
+    edge("continuous by half", over, continuous, around(2.0 / 1.5, STOP, LOOK));
+    edge("pulse", over, |d, i| d.ratings.cell.pulse = Some(Amps(i)), around(2.0, STOP, NONE));
+    // A quarter of the time on: half of it is effective.
+    let pulsed = |d: &mut Design, i: f64| {
+        continuous(d, i);
+        d.nominal.usage.rest = Seconds(0.3);
+    };
+    edge("effective current of pulses", over, pulsed, around(1.0, LOOK, NONE));
+    let long = |d: &mut Design, pulse: f64| {
+        pulsed(d, 1.5);
+        d.ratings.cell.pulse_time = Seconds(pulse);
+    };
+    edge("press longer than a pulse", over, long, around(0.1, LOOK, NONE));
+    let stuck = |d: &mut Design, hours: f64| {
+        pulsed(d, 1.5);
+        d.ratings.keeping.held_hours = hours;
+    };
+    edge("held button", over, stuck, [(0.0, NONE), (0.01, LOOK)]);
+    let two = |d: &mut Design, i: f64| {
+        continuous(d, i);
+        d.nominal.cell.parallel = 2;
+    };
+    edge("each of two cells", over, two, around(1.0, LOOK, NONE));
+    let low = is!(Kind::CellBelowWindow { .. });
+    // 3.7 V − 2 A·50 mΩ.
+    let least = |d: &mut Design, v: f64| d.ratings.cell.voltage_min = Volts(v);
+    edge("lowest voltage", low, least, around(3.6, NONE, LOOK));
+    let sagging = |d: &mut Design, r: f64| {
+        d.nominal.cell.r0 = Ohms(r);
+        d.over_discharge(None);
+    };
+    edge("below 2.0 V", low, sagging, around(1.7 / 2.0, LOOK, STOP));
+    let window = is!(Kind::DischargeTemperature { .. });
+    edge("hot use", window, |d, t| d.nominal.usage.ambient = Celsius(t), [(60.0, NONE), (60.01, LOOK)]);
+    edge("cold use", window, |d, t| d.ratings.keeping.cold = Celsius(t), [(-20.0, NONE), (-20.01, LOOK)]);
+}
+
+#[test]
+fn exact_heat_of_the_cell() {
+    let hot = is!(Kind::CellHot { .. });
+    let touch = is!(Kind::Touch { .. });
+    // 2 A through 50 mΩ are 0.2 W; a held button lasts until it has settled.
+    let held = |d: &mut Design, cooling: f64| {
+        d.ratings.keeping.held_hours = 1.0;
+        d.nominal.cell.heat_capacity_j_per_k = 1.0;
+        d.nominal.cell.cooling_w_per_k = cooling;
+    };
+    edge("60 °C", hot, held, around(0.2 / 35.0, LOOK, NONE));
+    edge("80 °C", hot, held, around(0.2 / 55.0, STOP, LOOK));
+    edge("48 °C to the touch", touch, held, around(0.2 / 23.0, LOOK, NONE));
+    edge("65 °C to the touch", touch, held, around(0.2 / 40.0, STOP, LOOK));
+    let closed = |d: &mut Design, cooling: f64| {
+        held(d, cooling);
+        d.ratings.keeping.closed_case = true;
+    };
+    edge("60 °C in a closed case", hot, closed, around(0.4 / 35.0, LOOK, NONE));
+    // Not held: 0.02 J a press into 0.2 mJ/K are 100 K in a press, 2 presses.
+    let pressed = |d: &mut Design, capacity: f64| d.nominal.cell.heat_capacity_j_per_k = capacity;
+    edge(
+        "60 °C in the charge",
+        hot,
+        pressed,
+        [(0.04 / 35.1, LOOK), (0.04 / 34.9, NONE)].map(|(c, l)| (c, l)),
+    );
+}
+
+#[test]
+fn exact_heat_of_switches_and_leads() {
+    let hot = is!(Kind::SwitchHot { .. });
+    let held = |alpha: f64| {
+        move |d: &mut Design, thermal: f64| {
+            d.ratings.keeping.held_hours = 1.0;
+            let board = d.nominal.board.as_mut().expect("a board");
+            board.thermal_k_per_w = thermal;
+            board.thermal_time = Seconds(1e6);
+            board.alpha_per_k = alpha;
+        }
+    };
+    // 2 A through 50 mΩ are 0.2 W.
+    edge("100 °C", hot, held(0.0), around(75.0 / 0.2, NONE, LOOK));
+    edge("150 °C", hot, held(0.0), around(125.0 / 0.2, LOOK, STOP));
+    let runs = is!(Kind::SwitchHot { runs_away: true, .. });
+    edge("no steady state", runs, held(0.004), around(1.0 / (0.2 * 0.004), NONE, STOP));
+    let closed = |d: &mut Design, thermal: f64| {
+        held(0.0)(d, thermal);
+        d.ratings.keeping.closed_case = true;
+    };
+    edge("100 °C in a closed case", hot, closed, around(37.5 / 0.2, NONE, LOOK));
+    let mut d = sound();
+    d.nominal.board.as_mut().expect("a board").thermal_k_per_w = 0.0;
+    assert_eq!(d.look().not_judged, [NotJudged::SwitchHeat(Protector::Board)]);
+
+    let lead_hot = is!(Kind::LeadHot { .. });
+    // 4 A²·0.380 Ω/m of 0.05 mm² over 10 W/(m²·K)·π·d; copper gains 0.393 % a kelvin above 20 °C.
+    let around_m = core::f64::consts::PI * (4.0 * 0.05 / core::f64::consts::PI).sqrt() * 1e-3;
+    let rise = 4.0 * 0.380 / (10.0 * around_m);
+    let settled = (25.0 + rise * (1.0 - 0.00393 * 20.0)) / (1.0 - 0.00393 * rise);
+    let rated = |last: f64| {
+        move |d: &mut Design, t: f64| {
+            let mut lead = lead(0.05);
+            lead.continuous = Celsius(t);
+            lead.last = Celsius(last);
+            d.ratings.leads = vec![lead];
+        }
+    };
+    edge("lead for good", lead_hot, rated(1e3), around(settled, LOOK, NONE));
+    let survives = |d: &mut Design, t: f64| rated(t)(d, 70.0);
+    edge("lead at its end", lead_hot, survives, around(settled, STOP, LOOK));
+}
+
+#[test]
+fn exact_contacts() {
+    for part in [ContactPart::Button, ContactPart::Connector] {
+        fn set(d: &mut Design, part: ContactPart) -> &mut Contact {
+            match part {
+                ContactPart::Button => &mut d.ratings.button,
+                ContactPart::Connector => &mut d.ratings.connector,
+            }
+        }
+        let current = move |d: &mut Design, i: f64| set(d, part).current = Some(Amps(i));
+        let over = move |k: &Kind| matches!(k, Kind::ContactCurrent { part: p, .. } if *p == part);
+        edge("contact", over, current, around(2.0, LOOK, NONE));
+        edge("contact by twice", over, current, around(1.0, STOP, LOOK));
+        // The empty input capacitor draws 3.7 V over 0.1 Ω at first.
+        let surge = move |k: &Kind| matches!(k, Kind::ContactSurge { part: p, .. } if *p == part);
+        edge("surge", surge, current, around(37.0, NOTE, NONE));
+        edge("surge by five times", surge, current, around(7.4, LOOK, NOTE));
+        let voltage = move |k: &Kind| matches!(k, Kind::ContactVoltage { part: p, .. } if *p == part);
+        let volts = move |d: &mut Design, v: f64| set(d, part).voltage = Some(Volts(v));
+        edge("contact voltage", voltage, volts, around(3.7, LOOK, NONE));
+        let mut d = sound();
+        *set(&mut d, part) = Contact { current: None, voltage: None };
+        assert_eq!(d.look().not_judged, [NotJudged::ContactCurrent(part), NotJudged::ContactVoltage(part)]);
+    }
+}
+
+#[test]
+fn exact_fuses() {
+    let breaking = is!(Kind::FuseBreaking { .. });
+    let most = |d: &mut Design, i: f64| d.ratings.fuse = Some(Fuse { breaking: Some(Amps(i)), ..quick(3.0) });
+    edge("breaking capacity, board in the path", breaking, most, around(37.0, LOOK, NONE));
+    let alone = |d: &mut Design, i: f64| {
+        most(d, i);
+        d.no_board();
+        d.nominal.path.after = Ohms(0.05);
+    };
+    edge("breaking capacity, nothing else", breaking, alone, around(37.0, STOP, NONE));
+    let slow = is!(Kind::FuseTooSlow { .. });
+    let rating = |d: &mut Design, i: f64| d.ratings.fuse = Some(quick(i));
+    // 37 A as in the short without protection; the lead stands 5.4 s.
+    let k = 226.0 * (394.5_f64 / 304.5).ln().sqrt();
+    let part = (1800.0 / (k * 0.75 / 37.0).powi(2)).ln() / 900.0_f64.ln();
+    let multiple = 2.1 * (2.75_f64 / 2.1).powf(part);
+    edge("fuse slower than the lead", slow, rating, around(37.0 / multiple, NONE, LOOK));
+    let opens = is!(Kind::FuseOpensOnLoad { .. });
+    edge("draw against the fuse's rating", opens, rating, around(2.0, LOOK, NONE));
+    let melting = |d: &mut Design, i2t: f64| {
+        let kind = FuseKind::MeltingI2t(Band { low: i2t, typical: 2.0 * i2t, high: 2.0 * i2t });
+        d.ratings.fuse = Some(Fuse { kind, ..quick(1.9) });
+    };
+    // 4 A² for the press of 0.1 s; it is above its rating in both.
+    let sooner = is!(Kind::FuseOpensOnLoad { earliest: Some(_), .. });
+    edge("above its rating", sooner, melting, [(0.3, LOOK), (0.5, LOOK)]);
+    let ptc = |d: &mut Design, hold: f64| {
+        let kind = FuseKind::Ptc { trip: Amps(2.0 * hold), time: Seconds(10.8), at: Amps(5.0 * hold) };
+        d.ratings.fuse = Some(Fuse { kind, ..quick(hold) });
+        d.nominal.usage.ambient = Celsius(23.0);
+        d.ratings.keeping.cold = Celsius(23.0);
+    };
+    edge("draw against the PTC's hold current", opens, ptc, around(2.0, LOOK, NONE));
+    let warm = |d: &mut Design, hold: f64| {
+        ptc(d, hold);
+        d.nominal.usage.ambient = Celsius(60.0);
+    };
+    edge("the same at 60 °C", opens, warm, around(2.0 / 0.72, LOOK, NONE));
+    let backup = is!(Kind::FuseBackupOnly { .. });
+    // At 37 A a time-lag fuse of 3.7 A (ten times) takes 20 ms at least; the board opens after its delay.
+    let delay = |d: &mut Design, t: f64| {
+        d.ratings.fuse = Some(Fuse { kind: FuseKind::TimeLag, ..quick(3.7) });
+        d.nominal.board.as_mut().expect("a board").stages[0].delay = Seconds(t);
+    };
+    edge("fuse behind the board", backup, delay, around(0.02, NOTE, NONE));
+    let heat = is!(Kind::FuseHeat { .. });
+    let ohm = |d: &mut Design, r: f64| {
+        rating(d, 3.0);
+        d.fuse_resistance = Some(Ohms(r));
+    };
+    edge("1.6 W in the fuse", heat, ohm, around(0.4, NONE, LOOK));
+    let mut d = sound();
+    d.ratings.fuse = Some(Fuse { breaking: None, ..quick(3.0) });
+    assert_eq!(d.look().not_judged, [NotJudged::FuseBreaking, NotJudged::FuseHeat]);
+}
+
+#[test]
+fn exact_what_protection_lets_through_and_standby() {
+    let through = is!(Kind::LetsThrough { .. });
+    let continuous = |d: &mut Design, i: f64| {
+        d.draw(1.0);
+        d.ratings.cell.continuous = Some(Amps(i));
+    };
+    edge("3 A that never trip", through, continuous, around(3.0, NOTE, NONE));
+    edge("twice the rating", through, continuous, around(1.5, LOOK, NOTE));
+    let standby = is!(Kind::StandbyDrain { .. });
+    let days = |d: &mut Design, days: f64| {
+        d.nominal.usage.standby = Amps(1e-3);
+        d.ratings.keeping.storage_days = days;
+    };
+    // 2.8 Ah less two presses of 2 A for 0.1 s, at 1 mA.
+    let left = (2.8 - 0.4 / 3600.0) / 1e-3 / 24.0;
+    edge("days on the shelf", standby, days, around(left, NONE, LOOK));
+}
+
+#[test]
+fn exact_wrong_cells_transport_and_the_rest() {
+    let mismatch = is!(Kind::ParallelMismatch { .. });
+    let two = |d: &mut Design, limit: f64| {
+        d.nominal.cell.parallel = 2;
+        d.ratings.keeping.parallel_mismatch = Volts(0.1);
+        d.ratings.cell.charge = Some(Amps(limit));
+    };
+    // 0.1 V over 2 × 50 mΩ.
+    edge("equalising current", mismatch, two, around(1.0, LOOK, NOTE));
+    edge("five times the charge limit", mismatch, two, around(0.2, STOP, LOOK));
+    edge("equal cells", mismatch, |d, n| d.nominal.cell.parallel = n as u32, [(1.0, NONE), (2.0, NONE)]);
+    let reversed = is!(Kind::ReversedCell { .. });
+    edge("reversed cell", reversed, |d, n| d.nominal.cell.parallel = n as u32, [(1.0, NOTE), (2.0, LOOK)]);
+    let transport = is!(Kind::Transport { .. });
+    let capacity = |d: &mut Design, q: f64| d.nominal.cell.capacity = AmpHours(q);
+    edge("20 Wh", transport, capacity, around(20.0 / 3.7, NOTE, LOOK));
+    let many = |d: &mut Design, q: f64| {
+        capacity(d, q);
+        d.nominal.cell.parallel = 6;
+    };
+    edge("100 Wh", transport, many, around(100.0 / 6.0 / 3.7, NOTE, LOOK));
+    let below = is!(Kind::DetectionBelowWindow { .. });
+    let least = |d: &mut Design, v: f64| d.ratings.cell.voltage_min = Volts(v);
+    edge("detection below the window", below, least, around(2.4, NONE, NOTE));
+    let estimated = is!(Kind::LoadEstimated);
+    edge("estimate", estimated, |d, x| d.ratings.load_estimated = x > 0.0, [(0.0, NONE), (1.0, NOTE)]);
+    assert_eq!(level(&sound().look(), is!(Kind::SwellingAndDisposal)), NOTE);
+    let mut d = sound();
+    d.ratings.charger = None;
+    d.ratings.leads.clear();
+    d.ratings.cell.continuous = None;
+    d.ratings.cell.pulse = None;
+    let not = d.look().not_judged;
+    let want = [NotJudged::Charger, NotJudged::CellContinuous, NotJudged::CellPulse, NotJudged::Leads];
+    assert_eq!(not, want);
+}
+
+/// A design with as much wrong as one can have.
+fn wrong() -> Design {
+    let mut d = sound();
+    d.no_board();
+    d.draw(7.0);
+    d.nominal.cell.parallel = 2;
+    d.ratings.keeping.parallel_mismatch = Volts(0.5);
+    d.ratings.keeping.held_hours = 8.0;
+    d.ratings.cell.continuous = Some(Amps(1.0));
+    d.ratings.cell.charge = Some(Amps(0.2));
+    d.ratings.leads = vec![lead(0.05), lead(0.75)];
+    d.ratings.output = Output { voltage: Some(Volts(1e4)), capacitance: Some(Farads(1e-6)) };
+    d.ratings.button.current = Some(Amps(0.05));
+    d.charger().load_while_charging = Amps(0.2);
+    d.charger().ambient = (Celsius(-10.0), Celsius(50.0));
+    d
+}
+
+#[test]
+fn law_findings_are_sorted_and_always_the_same() {
+    let first = wrong().look();
+    assert!(first.findings.len() > 15, "{} findings", first.findings.len());
+    assert!(first.findings.is_sorted_by_key(|f| f.level));
+    assert!(first.has_stop());
+    assert!(first.findings.iter().all(|f| !hazard::source(&f.kind).is_empty()));
+    for _ in 0..3 {
+        assert_eq!(wrong().look(), first);
+    }
+}
+
+#[test]
+fn exact_a_stop_is_never_a_design_that_holds() {
+    let d = sound();
+    let mut running = d.nominal.clone();
+    running.usage.max_presses = 100_000;
+    running.cell.capacity = AmpHours(1e-3);
+    let charged = charge::run(&running);
+    let works = verdict::judge(&charged, &charged);
+    assert_eq!(works.word, Word::Holds);
+    let sound = verdict::weigh(works, &d.look());
+    assert_eq!((sound.word, sound.stops), (Word::Holds, 0));
+    let weighed = verdict::weigh(works, &wrong().look());
+    assert_eq!(weighed.word, Word::Fails);
+    assert!(weighed.stops > 3);
+    assert_eq!(weighed.works, works);
+}
