@@ -8,7 +8,7 @@ use strikeline_core::charge;
 use strikeline_core::press::PressOptions;
 use strikeline_core::report::ChargeEnd;
 use strikeline_design::catalogue::{FIELDS, Field, Kind, When, field};
-use strikeline_design::check::check;
+use strikeline_design::check::{self, check};
 use strikeline_design::design::Design;
 use strikeline_design::quantity::Unit;
 use strikeline_design::{file, link, quantity};
@@ -180,6 +180,36 @@ fn law_drawn_texts_in_every_field() {
         }
     }
     assert!(refused > DRAWS / 2, "{refused} of {DRAWS} refused: the draws are too tame");
+}
+
+/// Drawn texts for every choice, many of them close to a key.
+#[test]
+fn law_a_drawn_choice_is_one_of_its_list_or_refused() {
+    let mut rng = Rng::with_seed(7);
+    for f in FIELDS {
+        let Kind::Choice(list) = f.kind else { continue };
+        let (mut chosen, mut refused) = (0, 0);
+        for _ in 0..DRAWS {
+            let key = list[rng.usize(0..list.len())].0;
+            let text = match rng.u8(0..4) {
+                0 => altered(&mut rng, key),
+                1 => format!("{key}{}", garbage(&mut rng)),
+                _ => garbage(&mut rng),
+            };
+            match check::chosen(list, &text) {
+                Ok(got) => {
+                    chosen += 1;
+                    assert!(text.contains(got) && list.iter().any(|(key, _)| *key == got), "{text:?}: {got}");
+                    assert!(text.replace(got, "").trim().is_empty(), "{text:?} taken as {got}");
+                }
+                Err(message) => {
+                    refused += 1;
+                    assert!(one_sentence(&message) && message.contains(list[0].0), "{text:?}: {message}");
+                }
+            }
+        }
+        assert!(chosen > DRAWS / 200 && refused > DRAWS / 2, "{}: {chosen} chosen, {refused} refused", f.key);
+    }
 }
 
 /// One field at a time in a sound design: a text that is no quantity of the field is a fault at that field.

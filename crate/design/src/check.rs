@@ -80,6 +80,19 @@ pub fn check(design: &Design) -> Result<Checked, Vec<Fault>> {
     }
 }
 
+/// Which of a list of (key, label) a text chooses.
+///
+/// # Errors
+/// A sentence: what was got and what would be accepted.
+pub fn chosen(list: &'static [(&'static str, &'static str)], text: &str) -> Result<&'static str, String> {
+    let text = text.trim();
+    if let Some((found, _)) = list.iter().find(|(key, _)| *key == text) {
+        return Ok(found);
+    }
+    let accepted: Vec<&str> = list.iter().map(|(key, _)| *key).collect();
+    Err(format!("“{}” is not one of {}", quantity::quoted(text), accepted.join(", ")))
+}
+
 struct Reader<'d> {
     design: &'d Design,
     faults: Vec<Fault>,
@@ -140,15 +153,14 @@ impl Reader<'_> {
     }
 
     fn choice(&mut self, key: &'static str) -> &str {
-        let text = self.design.get(key).trim();
         let Some(Kind::Choice(list)) = field(key).map(|f| f.kind) else { return "" };
-        if let Some((found, _)) = list.iter().find(|(k, _)| *k == text) {
-            return found;
+        match chosen(list, self.design.get(key)) {
+            Ok(found) => found,
+            Err(message) => {
+                self.fault(key, message);
+                list[0].0
+            }
         }
-        let accepted: Vec<&str> = list.iter().map(|(k, _)| *k).collect();
-        let message = format!("“{}” is not one of {}", quantity::quoted(text), accepted.join(", "));
-        self.fault(key, message);
-        list[0].0
     }
 
     /// The rows of a table; `None` where it is empty or faulty.

@@ -222,6 +222,12 @@ pub enum QuantityError {
         /// What was typed.
         text: String,
     },
+    /// Three values that are not in order.
+    #[error("“{text}” does not rise; accepted are least, typical and most, e.g. 120/150/180 mV")]
+    Unordered {
+        /// What was typed.
+        text: String,
+    },
     /// Not finite.
     #[error("{text} is too large a number")]
     TooLarge {
@@ -414,8 +420,8 @@ pub struct Toleranced {
     pub max: f64,
 }
 
-/// A value with its tolerance: `150 ± 30 mV`, `120…180 mV`, `120–180 mV`, `10 ms ± 20 %`, `10 (20) ms`, or
-/// a value alone.
+/// A value with its tolerance: `150 ± 30 mV`, `120/150/180 mV` (least, typical, most), `120…180 mV`, `120–180 mV`,
+/// `10 ms ± 20 %`, `10 (20) ms`, or a value alone.
 ///
 /// - `usual`: the fraction either way where the text gives none.
 ///
@@ -439,6 +445,22 @@ pub fn parse_toleranced(text: &str, shown: &Shown, usual: f64) -> Result<Toleran
         let bare = split(&plain(value)?).is_some_and(|(_, unit)| unit.is_empty());
         let typical = if bare { parse(&format!("{value} {unit}"), shown)? } else { parse(value, shown)? };
         return Ok(either_way(typical, parse(tolerance, shown)?.abs()));
+    }
+    if let [least, typical, most] = text.split('/').map(str::trim).collect::<Vec<_>>()[..]
+        && [least, typical, most].iter().all(|part| part.starts_with(|c: char| c.is_ascii_digit()))
+    {
+        // A unit behind the last counts for all three.
+        let unit = plain(most)?;
+        let unit = split(&unit).map_or("", |(_, unit)| unit);
+        let read = |part: &str| {
+            let bare = split(&plain(part)?).is_some_and(|(_, unit)| unit.is_empty());
+            if bare { parse(&format!("{part} {unit}"), shown) } else { parse(part, shown) }
+        };
+        let (min, typical, max) = (read(least)?, read(typical)?, read(most)?);
+        if min > typical || typical > max {
+            return Err(QuantityError::Unordered { text: quoted(&text) });
+        }
+        return Ok(Toleranced { typical, min, max });
     }
     if let Some((typical, rest)) = text.split_once('(')
         && let Some((most, unit)) = rest.split_once(')')
@@ -614,5 +636,18 @@ mod tests {
             }
         }
         assert_eq!(format(0.045, &MILLIOHM), "45 mΩ");
+    }
+
+    #[test]
+    fn exact_three_values_as_data_sheets_print_them() {
+        let read = |text: &str| parse_toleranced(text, &MILLIOHM, 0.1);
+        let close = |t: Toleranced, want: [f64; 3]| {
+            [t.min, t.typical, t.max].iter().zip(want).all(|(got, want)| (got - want).abs() < 1e-15)
+        };
+        for text in ["12.5/18/23 mΩ", "12,5 / 18 / 23", "12.5m/0.018 Ω/23 mΩ"] {
+            assert!(close(read(text).expect(text), [12.5e-3, 18e-3, 23e-3]), "{text}: {:?}", read(text));
+        }
+        assert_eq!(read("18/12/23"), Err(QuantityError::Unordered { text: "18/12/23".into() }));
+        assert!(read("12/18").is_err() && read("12//18").is_err() && read("1/2/3 V").is_err());
     }
 }
