@@ -8,10 +8,10 @@ use strikeline_core::units::{Amps, Celsius, Seconds};
 use strikeline_design::check::{self, Checked};
 use strikeline_design::design::Design;
 use strikeline_design::report::{self, Extras};
-use strikeline_design::{file, link};
+use strikeline_design::{file, link, shipped};
 
 const USAGE: &str = "\
-strikeline-batch [--events] [--trace] [--presses] design.json …
+strikeline-batch [--events] [--trace] [--presses] [--board CLASS] design.json …
     one JSON report per design, a line each; what cannot be used is named on standard error
 strikeline-batch replay design.json log.csv [--soc X] [--temperature T] [--json]
     the design's cell under a recorded current (columns time_s, current_A; optional voltage_V, temperature_C)
@@ -19,6 +19,8 @@ strikeline-batch link design.json
     the design's link, from # on
 strikeline-batch open '#2.…'
     the design file of a link
+strikeline-batch boards
+    the classes of board that --board puts in place of the design's own
 strikeline-batch demo
     the worked example as a design file
 strikeline-batch fields
@@ -58,6 +60,10 @@ fn run(arguments: &[String]) -> Result<Said, String> {
         [] => Err(USAGE.into()),
         ["--help" | "-h"] => Ok((USAGE.to_string() + "\n").into()),
         ["demo"] => Ok((file::to_json(&Design::demo()) + "\n").into()),
+        ["boards"] => {
+            let line = |c: &shipped::BoardClass| format!("{}: {}. {}\n", c.key, c.label, c.about);
+            Ok(shipped::board_classes().iter().map(line).collect::<String>().into())
+        }
         ["fields"] => Ok(file::field_table().into()),
         ["link", path] => Ok((link::encode(&design(path)?) + "\n").into()),
         ["open", fragment] => {
@@ -71,9 +77,19 @@ fn run(arguments: &[String]) -> Result<Said, String> {
 
 fn reports(words: &[&str]) -> Result<Said, String> {
     let mut extras = Extras::default();
+    let mut class = None;
     let mut paths = Vec::new();
-    for word in words {
+    let mut words = words.iter();
+    while let Some(word) = words.next() {
         match *word {
+            "--board" => {
+                let key = words.next().ok_or("--board wants a class of board")?;
+                let found = shipped::board_classes().iter().find(|c| c.key == *key);
+                class = Some(found.ok_or_else(|| {
+                    let keys: Vec<&str> = shipped::board_classes().iter().map(|c| c.key).collect();
+                    format!("--board {key}: accepted is one of {}", keys.join(", "))
+                })?);
+            }
             "--events" => extras.events = true,
             "--trace" => extras.trace = true,
             "--presses" => extras.presses = true,
@@ -87,7 +103,7 @@ fn reports(words: &[&str]) -> Result<Said, String> {
     // A file that cannot be used takes nothing from the others.
     let mut said = Said { out: String::new(), refused: Vec::new() };
     for path in paths {
-        match report_of(path, extras) {
+        match report_of(path, class, extras) {
             Ok(line) => said.out += &(line + "\n"),
             Err(message) => said.refused.push(message),
         }
@@ -95,8 +111,11 @@ fn reports(words: &[&str]) -> Result<Said, String> {
     Ok(said)
 }
 
-fn report_of(path: &str, extras: Extras) -> Result<String, String> {
-    let design = design(path)?;
+fn report_of(path: &str, class: Option<&shipped::BoardClass>, extras: Extras) -> Result<String, String> {
+    let mut design = design(path)?;
+    if let Some(class) = class {
+        shipped::apply(&mut design, class.key);
+    }
     let checked = checked(path, &design)?;
     let answers = report::answer(&checked);
     Ok(report::json(&design.name, &checked, &answers, extras).to_string())

@@ -114,6 +114,21 @@ fn exact_what_is_wrong_is_said_with_2() {
 }
 
 #[test]
+fn exact_a_class_of_board_takes_the_place_of_the_designs_own() {
+    let folder = Folder::new("boards");
+    let short = folder.file("short.json", SHORT);
+    let none = r#"{"strikeline": 2, "name": "short", "cell": {"capacity": 2.28}, "board": {"arrangement": "no_board"}}"#;
+    let none = folder.file("none.json", none);
+    let output = run(&["--board", "none", &short]);
+    assert_eq!(output.status.code(), Some(0));
+    assert_eq!(stdout(&output), stdout(&run(&[&none])));
+    assert_ne!(stdout(&output), stdout(&run(&[&short])));
+    refused(&["--board", "best", &short], "two_level");
+    refused(&["--board"], "wants a class");
+    assert!(stdout(&run(&["boards"])).lines().any(|l| l.starts_with("three_level: ")));
+}
+
+#[test]
 fn exact_a_bad_file_takes_nothing_from_the_others() {
     let folder = Folder::new("some");
     let short = folder.file("short.json", SHORT);

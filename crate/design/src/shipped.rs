@@ -2,11 +2,16 @@
 //!
 //! Every number of the three measured cells is what the derivation in the tests package prints; a test
 //! holds the two together. A cell of another size has the same voltages, and resistances that fall with
-//! its capacity: the same build, more of it. That is a start, not a measurement.
+//! its capacity: the same build, more of it. That is a start, not a measurement. Boards to start from are
+//! in a file of their own.
+
+mod boards;
 
 use strikeline_core::cell::{Branch, Cell, CellLimits};
 use strikeline_core::math::{Monotone, Polyline};
 use strikeline_core::units::{AmpHours, Amps, Celsius, Ohms, Seconds, Volts};
+
+pub use boards::{BoardClass, FOUR_NUMBERS, PAIR_BY_METER, apply, board_classes};
 
 /// A kind of cell.
 #[derive(Debug)]
