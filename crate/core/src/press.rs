@@ -125,12 +125,14 @@ pub struct PressOptions {
     pub samples: Vec<Seconds>,
     /// The press is followed for at most this many events.
     pub max_events: u32,
+    /// It is followed to the first drop of the arc only; the end is then that of the bound on events.
+    pub until_drop: bool,
 }
 
 impl Default for PressOptions {
     /// No samples, 100 000 events.
     fn default() -> Self {
-        Self { samples: Vec::new(), max_events: 100_000 }
+        Self { samples: Vec::new(), max_events: 100_000, until_drop: false }
     }
 }
 
@@ -140,6 +142,7 @@ impl Default for PressOptions {
 /// the same within what the solver allows, not to the last bit.
 pub fn run(setup: &Setup, start: &PressStart, options: &PressOptions) -> PressReport {
     let mut simulator = Simulator::new(setup, options.max_events);
+    simulator.until_drop = options.until_drop;
     let mut recorder = Recorder { events: Vec::new(), trace: Vec::new(), wanted: &options.samples };
     let summary = simulator.press(&mut start.state(), Some(&mut recorder), u64::MAX);
     PressReport { events: recorder.events, trace: recorder.trace, summary }
@@ -323,6 +326,7 @@ pub(crate) struct Simulator<'a> {
     pub(crate) circuit: Circuit<'a>,
     pub(crate) watches: Vec<Watch>,
     max_events: u32,
+    until_drop: bool,
     /// Step sizes that suited the slaved phases of the press before: unlit and lit.
     hints: [f64; 2],
     /// How far a slaved voltage may part from its integrated drift in a step, in V.
@@ -349,6 +353,7 @@ impl<'a> Simulator<'a> {
             circuit: Circuit::new(setup),
             watches: list,
             max_events,
+            until_drop: false,
             hints: [1e-3, 0.05],
             drift_within: (CHARGE_WITHIN / setup.load.capacitance.0).clamp(1e-6, 5e-5),
             mode: Mode::Stalled,

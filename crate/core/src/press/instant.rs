@@ -162,6 +162,7 @@ impl Simulator<'_> {
             });
         }
         self.enter(Mode::Unlit, EventKind::Drop, now);
+        now.tally.lost |= self.until_drop;
     }
 
     /// Whether path and lit load meet at any voltage.
