@@ -83,6 +83,8 @@ async fn same_report(browser: &Browser) {
         ("second.fitted", "yes"),
         ("board.arrangement", "no_board"),
         ("cell.chemistry", "lfp_cylinder"),
+        ("leads.fuse", "quick"),
+        ("load.known", "estimated"),
     ] {
         let mut design = designs.last().expect("one").clone();
         design.set(key, text);

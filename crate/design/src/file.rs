@@ -4,7 +4,6 @@
 //! is a text or a list of pairs. What a file leaves out stands at the default of the file's version. A key that
 //! is not known, or stands twice, is refused by name, so that nothing is silently ignored.
 
-use std::collections::BTreeSet;
 use std::fmt;
 
 use serde::de::{Deserialize, Deserializer, MapAccess, SeqAccess, Visitor};
@@ -136,12 +135,11 @@ impl Node {
             Self::Leaf(value) => Ok(value),
             Self::Array(rows) => rows.into_iter().map(|row| row.once(path)).collect(),
             Self::Object(entries) => {
-                let mut seen = BTreeSet::new();
                 let mut map = Map::new();
                 for (name, node) in entries {
                     let path =
                         if path.is_empty() { quoted(&name) } else { format!("{path}.{}", quoted(&name)) };
-                    if !seen.insert(name.clone()) {
+                    if map.contains_key(&name) {
                         return Err(FileError::Twice(path));
                     }
                     map.insert(name, node.once(&path)?);
@@ -327,6 +325,8 @@ mod tests {
     fn exact_refusals_name_what_is_wrong() {
         let said = |text: &str| from_json(text).expect_err(text).to_string();
         assert!(said(r#"{"strikeline": 1, "cell": {"capasity": 1}}"#).contains("cell.capasity"));
+        let later = said(r#"{"strikeline": 1, "charger": {"fitted": "yes"}}"#);
+        assert!(later.contains("charger.fitted came with version 2"), "{later}");
         assert!(said(r#"{"strikeline": 9}"#).contains("version 9"));
         assert!(said(r#"{"strikeline": 1, "cell": {"capacity": [1]}}"#).contains("cell.capacity"));
         assert!(

@@ -3,12 +3,10 @@
 //! A link holds only what differs from the defaults, and a file may leave out what it likes. Were that filled in
 //! from today's defaults, another default would change every old design without a word. So each version's
 //! fields and defaults stand here and never change again. Another default or a new field is a new step at the
-//! end; a stored design goes through every step from its own version on. A test holds the newest version and the
+//! end; a stored design is given what every step after its own version declares. A test holds the newest version and the
 //! catalogue together.
 
-use std::collections::BTreeMap;
-
-use crate::design::{Design, LONGEST_TEXT};
+use crate::design::Design;
 
 /// The version that is written, of links and of files.
 pub const VERSION: u32 = 2;
@@ -212,13 +210,25 @@ pub enum Refused {
 /// Every field of a version, with its default there.
 ///
 /// - `version`: 1 to [`VERSION`].
-pub fn defaults(version: u32) -> BTreeMap<&'static str, &'static str> {
-    let mut all: BTreeMap<_, _> = FIRST.iter().copied().collect();
+pub fn defaults(version: u32) -> Vec<(&'static str, &'static str)> {
+    let mut all = FIRST.to_vec();
     for step in &STEPS[..version as usize - 1] {
+        for (key, default) in step.changed {
+            if let Some(field) = all.iter_mut().find(|field| field.0 == *key) {
+                field.1 = default;
+            }
+        }
         all.extend(step.added.iter().map(|a| (a.key, a.default)));
-        all.extend(step.changed.iter().copied());
     }
     all
+}
+
+/// The version that brought a field.
+fn since(key: &str) -> Option<u32> {
+    if FIRST.iter().any(|(first, _)| *first == key) {
+        return Some(1);
+    }
+    (2..=VERSION).find(|version| STEPS[*version as usize - 2].added.iter().any(|a| a.key == key))
 }
 
 /// The design of a stored version, from the entries that stand in it.
@@ -229,31 +239,27 @@ pub fn defaults(version: u32) -> BTreeMap<&'static str, &'static str> {
 /// # Errors
 /// The first entry that cannot be used.
 pub fn open(version: u32, entries: Vec<(String, String)>) -> Result<Design, Refused> {
-    let mut texts: BTreeMap<&str, String> =
-        defaults(version).into_iter().map(|(key, text)| (key, text.to_string())).collect();
-    let mut seen = std::collections::BTreeSet::new();
-    for (key, text) in entries {
-        let Some(place) = texts.get_mut(key.as_str()) else {
-            let since = (version + 1..=VERSION).find(|v| defaults(*v).contains_key(key.as_str()));
-            return Err(match since {
-                Some(since) => Refused::Later { key, since },
-                None => Refused::Unknown(key),
-            });
-        };
-        if text.len() > LONGEST_TEXT {
-            return Err(Refused::TooLong { key, got: text.len() });
-        }
-        *place = text;
-        if !seen.insert(key.clone()) {
-            return Err(Refused::Twice(key));
-        }
+    let mut design = Design::default();
+    for (key, text) in defaults(version) {
+        design.set(key, text);
     }
     for step in &STEPS[version as usize - 1..] {
-        texts.extend(step.added.iter().map(|a| (a.key, a.before.to_string())));
+        for field in step.added {
+            design.set(field.key, field.before);
+        }
     }
-    let mut design = Design::default();
-    for (key, text) in texts {
-        design.set(key, &text);
+    for (k, (key, text)) in entries.iter().enumerate() {
+        match since(key) {
+            None => return Err(Refused::Unknown(key.clone())),
+            Some(since) if since > version => return Err(Refused::Later { key: key.clone(), since }),
+            Some(_) => {}
+        }
+        if entries[..k].iter().any(|(before, _)| before == key) {
+            return Err(Refused::Twice(key.clone()));
+        }
+        if !design.set(key, text) {
+            return Err(Refused::TooLong { key: key.clone(), got: text.len() });
+        }
     }
     Ok(design)
 }
@@ -262,19 +268,16 @@ pub fn open(version: u32, entries: Vec<(String, String)>) -> Result<Design, Refu
 mod tests {
     use super::*;
     use crate::catalogue::FIELDS;
+    use crate::design::LONGEST_TEXT;
 
     /// Whoever changes a default or adds a field comes by here: links of the newest version mean its defaults.
     #[test]
     fn law_the_newest_version_is_the_catalogue() {
         let usual = Design::default();
         let newest = defaults(VERSION);
+        let in_newest = |key: &str| newest.iter().find(|(k, _)| *k == key).map(|(_, text)| *text);
         for f in FIELDS {
-            assert_eq!(
-                newest.get(f.key).copied(),
-                Some(usual.get(f.key)),
-                "{}: needs a step in versions.rs",
-                f.key
-            );
+            assert_eq!(in_newest(f.key), Some(usual.get(f.key)), "{}: needs a step in versions.rs", f.key);
         }
         assert_eq!(newest.len(), FIELDS.len(), "versions.rs has a field that the catalogue has not");
     }
