@@ -11,11 +11,12 @@
 use crate::board::{Board, SensePoint, Stage, Threshold};
 use crate::cell::MAX_BRANCHES;
 use crate::circuit::{Circuit, PathNow};
-use crate::math::{exp, ln, powf};
+use crate::math::exp;
 use crate::press::PressStart;
 use crate::ratings::{Band, Fuse, FuseKind, LeadRating, OverCharge, Ratings};
 use crate::report::{ChargeReport, PressSummary, Protector};
 use crate::setup::{Arrangement, Setup};
+use crate::time_current;
 use crate::units::{Amps, Celsius, Seconds, Volts, Watts};
 use crate::wiring::{adiabatic_k, copper_factor, time_to_limit};
 
@@ -185,7 +186,7 @@ pub fn arranged(given: &Given<'_>, arrangement: Arrangement) -> Arranged {
             let at = |start: &PressStart| {
                 let [low, mid, high] = three.map(|(setup, board)| {
                     board.stages.get(index).map_or(f64::INFINITY, |stage| {
-                        trip_current(setup, protector, stage, start, setup.load.peak_factor).0
+                        trip_needed(setup, protector, stage, start, setup.load.peak_factor).0
                     })
                 });
                 Band { low, typical: mid, high }
@@ -354,7 +355,9 @@ fn supplies(setup: &Setup, start: &PressStart, current: f64) -> (f64, f64) {
     (cell - current * (second + setup.path.ahead.0), cell)
 }
 
-/// The steady current in the path from which a stage is exceeded.
+/// The steady current in the path that a stage needs to be exceeded, whether or not the path can give it.
+///
+/// Where it can, this is [`crate::margins::trip_current`].
 ///
 /// - `protector`: whose stage it is; it is in the path of `setup`.
 /// - `start`: state of the cell and temperatures of the switches.
@@ -362,7 +365,7 @@ fn supplies(setup: &Setup, start: &PressStart, current: f64) -> (f64, f64) {
 ///
 /// `k·I·R_pair(V_board(I)) = V_sense`: the left side rises with I, because the on-resistance never rises with the
 /// supply. Infinite where the sense resistance is 0.
-pub fn trip_current(
+pub fn trip_needed(
     setup: &Setup,
     protector: Protector,
     stage: &Stage,
@@ -410,7 +413,7 @@ fn stage_sees_short(setup: &Setup, protector: Protector, index: usize, start: &P
         Protector::Second => setup.second_protector.as_ref(),
     };
     let Some(stage) = board.and_then(|b| b.stages.get(index)) else { return false };
-    shorted(setup, start).current > trip_current(setup, protector, stage, start, 1.0).0
+    shorted(setup, start).current > trip_needed(setup, protector, stage, start, 1.0).0
 }
 
 /// Whether anything electronic opens on a short circuit at the load: a current stage, or over-discharge detection
@@ -506,20 +509,6 @@ pub struct FuseTime {
     pub latest: Option<Seconds>,
 }
 
-/// (multiple of the rated current, shortest pre-arcing time in s), (multiple, longest).
-type Gates = (&'static [(f64, f64)], &'static [(f64, f64)]);
-
-/// Quick acting. Source: IEC 60127-2, sheet 2 (0.4 to 6.3 A), as makers' data sheets print it.
-const QUICK: Gates =
-    (&[(1.5, 3600.0), (2.75, 0.05), (4.0, 0.01)], &[(2.1, 1800.0), (2.75, 2.0), (4.0, 0.3), (10.0, 0.02)]);
-/// Time-lag. Source: IEC 60127-2, sheet 3, as makers' data sheets print it.
-const TIME_LAG: Gates = (
-    &[(1.5, 3600.0), (2.75, 0.6), (4.0, 0.15), (10.0, 0.02)],
-    &[(2.1, 120.0), (2.75, 10.0), (4.0, 3.0), (10.0, 0.3)],
-);
-/// A melting I²t is a statement about short times; beyond this the latest time is unknown. Our choice.
-const MELTING_WITHIN_S: f64 = 1.0;
-
 /// Derating of a PTC's currents against 23 °C.
 ///
 /// Points of makers' charts for radial polymer types, from memory; straight lines between.
@@ -547,54 +536,15 @@ pub fn fuse_band(fuse: &Fuse, ambient: Celsius) -> Band {
 
 /// When a fuse opens at a steady current.
 ///
-/// Between two gates of the standard the logarithm of the time is a straight line over that of the current; beyond
-/// the last gate the shortest time keeps its I²t and the longest stays (both our choice). A PTC warms as one body:
-/// `t = t₀·ln[1 − (I_t/I₀)²]/ln[1 − (I_t/I)²]`, with the hold current for the earliest; a maker's time is a longest
-/// one, and how much sooner a part may trip is not known.
+/// The times are those of [`time_current::fuse_times`]; a PTC that is warmer than 23 °C opens as at a current that is
+/// larger by its derating.
 pub fn fuse_time(fuse: &Fuse, current: Amps, ambient: Celsius) -> FuseTime {
-    let (soonest, longest) = match &fuse.kind {
-        FuseKind::Quick => QUICK,
-        FuseKind::TimeLag => TIME_LAG,
-        FuseKind::MeltingI2t(melting) => {
-            if current.0 <= fuse.rating.0 {
-                return FuseTime { earliest: None, latest: None };
-            }
-            let i2 = current.0 * current.0;
-            let latest = melting.high / i2;
-            return FuseTime {
-                earliest: Some(Seconds(melting.low / i2)),
-                latest: (latest <= MELTING_WITHIN_S).then_some(Seconds(latest)),
-            };
-        }
-        FuseKind::Ptc { trip, time, at } => {
-            let derated = ptc_derating(ambient);
-            let warms = |limit: f64| {
-                let part = |i: f64| -ln(1.0 - limit * limit / (i * i));
-                // Its published time holds at 23 °C.
-                (current.0 > derated * limit && at.0 > limit)
-                    .then(|| Seconds(time.0 * part(current.0 / derated) / part(at.0)))
-            };
-            return FuseTime { earliest: warms(fuse.rating.0), latest: warms(trip.0) };
-        }
+    let current = match fuse.kind {
+        FuseKind::Ptc { .. } => current / ptc_derating(ambient),
+        FuseKind::Quick | FuseKind::TimeLag | FuseKind::MeltingI2t(_) => current,
     };
-    let ratio = current / fuse.rating;
-    let &(last, last_time) = &soonest[soonest.len() - 1];
-    let earliest = if ratio > last {
-        Some(last_time * (last / ratio) * (last / ratio))
-    } else {
-        between_gates(soonest, ratio)
-    };
-    let latest = between_gates(longest, ratio.min(longest[longest.len() - 1].0));
-    FuseTime { earliest: earliest.map(Seconds), latest: latest.map(Seconds) }
-}
-
-fn between_gates(gates: &[(f64, f64)], ratio: f64) -> Option<f64> {
-    let above = gates.partition_point(|(x, _)| *x < ratio);
-    if above == 0 {
-        return (gates[0].0 <= ratio).then_some(gates[0].1);
-    }
-    let ((x0, t0), (x1, t1)) = (gates[above - 1], *gates.get(above)?);
-    Some(t0 * powf(t1 / t0, ln(ratio / x0) / ln(x1 / x0)))
+    let (earliest, latest) = time_current::fuse_times(fuse, current);
+    FuseTime { earliest, latest }
 }
 
 /// Where the state stands after a press.

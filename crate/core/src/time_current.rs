@@ -244,6 +244,7 @@ const PTC_EARLIEST: f64 = 0.1;
 /// promise that it does.
 ///
 /// Between two gates times go as straight lines on the double logarithmic sheet; beyond the last one at constant I²t.
+/// A PTC warms as one body, `t = t₀·ln[1 − (I_t/I)²]⁻¹/ln[1 − (I_t/I₀)²]⁻¹`, with its hold current for the earliest.
 pub fn fuse_times(fuse: &Fuse, current: Amps) -> (Option<Seconds>, Option<Seconds>) {
     let i = current.0;
     let rated = fuse.rating.0;
@@ -261,8 +262,13 @@ pub fn fuse_times(fuse: &Fuse, current: Amps) -> (Option<Seconds>, Option<Second
             if i <= rated {
                 return (None, None);
             }
-            let latest = time.0 * (at.0 / i) * (at.0 / i);
-            (Some(Seconds(latest * PTC_EARLIEST)), (i >= trip.0).then_some(Seconds(latest)))
+            // It warms as one body: it takes for ever at a current that it only just settles hot at.
+            let warming = |settles: f64, i: f64| -crate::math::ln(1.0 - (settles / i) * (settles / i));
+            let longest = |settles: f64| time.0 * warming(settles, i) / warming(settles, at.0);
+            let latest = (i > trip.0 && at.0 > trip.0).then(|| Seconds(longest(trip.0)));
+            // A time given at no more than the hold current says nothing of how soon it may be.
+            let earliest = if at.0 > rated { PTC_EARLIEST * longest(rated) } else { 0.0 };
+            (Some(Seconds(earliest)), latest)
         }
     }
 }

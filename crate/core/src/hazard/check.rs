@@ -1,0 +1,137 @@
+//! What the checks share: the parts, the weakest short circuits, the draw.
+
+use super::{CLOSED_CASE, Case, Circumstances, Finding, Hazards, Kind, Level, NotJudged};
+use crate::arrangements::{self, Arranged, Given, ShortCircuit};
+use crate::press::PressStart;
+use crate::ratings::Ratings;
+use crate::report::{ChargeReport, Protector};
+use crate::setup::Setup;
+use crate::units::{Amps, Celsius, Seconds};
+
+impl Hazards {
+    /// A check that was made, and what it found.
+    pub(super) fn check(&mut self, found: Option<(Level, Kind)>) {
+        self.checks_made += 1;
+        if let Some((level, kind)) = found {
+            self.findings.push(Finding { level, kind });
+        }
+    }
+
+    pub(super) fn cannot(&mut self, what: NotJudged) {
+        self.not_judged.push(what);
+    }
+}
+
+/// Every charge there is: nominal, weak, cold.
+pub(super) fn charges<'a>(c: &Circumstances<'a>) -> impl Iterator<Item = &'a ChargeReport> {
+    [Some(c.charge), c.weak_charge, c.cold_charge].into_iter().flatten()
+}
+
+/// The largest draw at the end of a press, all charges.
+pub(super) fn steady_draw(c: &Circumstances<'_>) -> Amps {
+    Amps(charges(c).flat_map(|r| &r.presses).fold(0.0, |m: f64, p| m.max(p.summary.current_end.0)))
+}
+
+/// The checks, with what several of them need.
+pub(super) struct Look<'c, 'a> {
+    pub(super) c: &'c Circumstances<'a>,
+    /// As it is wired.
+    pub(super) arranged: Arranged,
+    /// Largest steady draw of a press, all cells.
+    pub(super) draw: Amps,
+    /// Largest current of a press, all cells.
+    pub(super) peak: Amps,
+}
+
+/// The leads' shortest time to their limit.
+pub(super) fn lead_limit(short: &ShortCircuit) -> Option<Seconds> {
+    short.leads.iter().map(|l| l.limit).min_by(|a, b| a.0.total_cmp(&b.0))
+}
+
+impl<'c, 'a> Look<'c, 'a> {
+    pub(super) fn new(c: &'c Circumstances<'a>, given: &Given<'a>) -> Self {
+        Self {
+            c,
+            arranged: arrangements::arranged(given, c.nominal.arrangement),
+            draw: steady_draw(c),
+            peak: Amps(
+                charges(c).flat_map(|r| &r.presses).fold(0.0, |m: f64, p| m.max(p.summary.peak_current.0)),
+            ),
+        }
+    }
+
+    pub(super) fn ratings(&self) -> &'a Ratings {
+        self.c.ratings
+    }
+
+    pub(super) fn parallel(&self) -> f64 {
+        f64::from(self.c.nominal.cell.parallel)
+    }
+
+    pub(super) fn closed(&self) -> f64 {
+        if self.ratings().keeping.closed_case { CLOSED_CASE } else { 1.0 }
+    }
+
+    pub(super) fn held(&self) -> bool {
+        self.ratings().keeping.held_hours > 0.0
+    }
+
+    pub(super) fn cases(&self) -> [(Case, Celsius); 2] {
+        [(Case::Ambient, self.c.nominal.usage.ambient), (Case::Cold, self.ratings().keeping.cold)]
+    }
+
+    /// Weak parts with the protectors at their late corner, at an ambient temperature.
+    pub(super) fn weak_and_late(&self, ambient: Celsius) -> Setup {
+        let mut setup = arrangements::wired(self.c.weak, self.c.nominal.arrangement);
+        setup.usage.ambient = ambient;
+        if let Some(board) = self.c.board.late.or(self.c.nominal.board.as_ref()) {
+            setup.board = Some(board.clone());
+        }
+        if let Some(board) = self.c.second.late.or(self.c.nominal.second_protector.as_ref()) {
+            setup.second_protector = Some(board.clone());
+        }
+        setup
+    }
+
+    /// Where a weak short circuit is looked at: full and empty, at ambient and cold.
+    pub(super) fn weak_shorts(&self) -> Vec<(Case, Setup, PressStart, ShortCircuit)> {
+        let mut list = Vec::new();
+        for (case, t) in self.cases() {
+            let setup = self.weak_and_late(t);
+            for soc in [1.0, 0.0] {
+                let start = PressStart::relaxed(&setup, soc, t);
+                let short = arrangements::short_circuit(&setup, &start, &self.ratings().leads);
+                list.push((case, setup.clone(), start, short));
+            }
+        }
+        list
+    }
+
+    /// When the fuse clears for certain, in the slower of the surroundings.
+    pub(super) fn fuse_clears(&self, current: Amps) -> Option<Seconds> {
+        let fuse = self.ratings().fuse.as_ref()?;
+        let [a, b] = self.cases().map(|(_, t)| arrangements::fuse_time(fuse, current, t).latest);
+        Some(Seconds(a?.0.max(b?.0)))
+    }
+
+    /// Whether a current stage opens, though over-discharge detection may be quicker.
+    pub(super) fn a_stage_opens(&self, setup: &Setup, start: &PressStart) -> bool {
+        let mut stages_only = setup.clone();
+        for board in [&mut stages_only.board, &mut stages_only.second_protector].into_iter().flatten() {
+            board.over_discharge = None;
+        }
+        arrangements::opens_on_short(&stages_only, start).is_some()
+    }
+
+    /// Lowest steady current that trips a stage.
+    pub(super) fn lowest_trip(&self, setup: &Setup, start: &PressStart) -> Option<Amps> {
+        let boards =
+            [(Protector::Board, setup.board_in_path()), (Protector::Second, setup.second_protector.as_ref())];
+        boards
+            .into_iter()
+            .filter_map(|(protector, board)| board.map(|b| (protector, b)))
+            .flat_map(|(protector, b)| b.stages.iter().map(move |stage| (protector, stage)))
+            .map(|(protector, stage)| arrangements::trip_needed(setup, protector, stage, start, 1.0))
+            .min_by(|a, b| a.0.total_cmp(&b.0))
+    }
+}
