@@ -12,7 +12,7 @@ mod law;
 mod opening;
 mod rating;
 
-use crate::arrangements::{self, Arranged, By, Corners, Given, Held, ShortCircuit};
+use crate::arrangements::{Arranged, By, Corners, Given, Held, ShortCircuit};
 use crate::ratings::{Band, Ratings};
 use crate::report::{ChargeReport, Limit, Protector};
 use crate::setup::{Arrangement, Setup};
