@@ -325,6 +325,12 @@ fn exact_short_without_protection() {
         d.ratings.fuse = Some(quick(rating));
     };
     edge("fuse against the lead", bare, fused, around(37.0 / multiple, LOOK, STOP));
+    // It counts only if it can interrupt the current.
+    let breaking = |d: &mut Design, i: f64| {
+        fused(d, 5.0);
+        d.ratings.fuse.as_mut().expect("a fuse").breaking = Some(Amps(i));
+    };
+    edge("breaking capacity", bare, breaking, around(37.0, STOP, LOOK));
     let mut d = sound();
     fused(&mut d, 5.0);
     let found = d.look();
@@ -686,6 +692,27 @@ fn exact_cell_over_its_rating() {
     let window = is!(Kind::DischargeTemperature { .. });
     edge("hot use", window, |d, t| d.nominal.usage.ambient = Celsius(t), [(60.0, NONE), (60.01, LOOK)]);
     edge("cold use", window, |d, t| d.ratings.keeping.cold = Celsius(t), [(-20.0, NONE), (-20.01, LOOK)]);
+}
+
+#[test]
+fn exact_a_trip_in_the_inrush_is_no_draw() {
+    // 37 A into the empty capacitor open a stage without delay. What the parts carry is the draw that was to come.
+    let mut d = sound();
+    d.nominal.board.as_mut().expect("a board").stages.push(flat::stage("short", Volts(0.5), Seconds(0.0)));
+    d.ratings.cell.voltage_min = Volts(2.5);
+    let found = d.look();
+    assert_eq!(level(&found, is!(Kind::NuisanceTrip { limit: Limit::Stage(_, 1), .. })), LOOK);
+    assert_eq!(level(&found, is!(Kind::CellOverRating { .. })), NONE);
+    assert_eq!(level(&found, is!(Kind::CellBelowWindow { .. })), NONE);
+    let rated = |d: &mut Design, i: f64| {
+        d.nominal.board.as_mut().expect("a board").stages.push(flat::stage(
+            "short",
+            Volts(0.5),
+            Seconds(0.0),
+        ));
+        d.ratings.button.current = Some(Amps(i));
+    };
+    edge("draw that was to come", is!(Kind::ContactCurrent { .. }), rated, around(2.0, LOOK, NONE));
 }
 
 #[test]

@@ -2,9 +2,10 @@
 
 use super::{CLOSED_CASE, Case, Circumstances, Finding, Hazards, Kind, Level, NotJudged};
 use crate::arrangements::{self, Arranged, Given, ShortCircuit};
+use crate::margins;
 use crate::press::PressStart;
 use crate::ratings::Ratings;
-use crate::report::{ChargeReport, Protector};
+use crate::report::{ChargeReport, Mode, Protector};
 use crate::setup::Setup;
 use crate::units::{Amps, Celsius, Seconds};
 
@@ -27,9 +28,18 @@ pub(super) fn charges<'a>(c: &Circumstances<'a>) -> impl Iterator<Item = &'a Cha
     [Some(c.charge), c.weak_charge, c.cold_charge].into_iter().flatten()
 }
 
-/// The largest draw at the end of a press, all charges.
+/// The largest draw at the end of a press that ends lit, all charges; where none does, what a press would draw with
+/// the arc lit and a full cell.
+///
+/// A press that opens in its inrush ends at a current that is no draw.
 pub(super) fn steady_draw(c: &Circumstances<'_>) -> Amps {
-    Amps(charges(c).flat_map(|r| &r.presses).fold(0.0, |m: f64, p| m.max(p.summary.current_end.0)))
+    let lit = charges(c)
+        .flat_map(|r| &r.presses)
+        .filter(|p| p.summary.end_mode == Mode::Lit)
+        .map(|p| p.summary.current_end.0)
+        .reduce(f64::max);
+    let would = || margins::end_of_press(c.nominal, 1.0, c.nominal.usage.ambient).1.map(|s| s.current.0);
+    Amps(lit.or_else(would).unwrap_or(0.0))
 }
 
 /// The checks, with what several of them need.
@@ -107,9 +117,13 @@ impl<'c, 'a> Look<'c, 'a> {
         list
     }
 
-    /// When the fuse clears for certain, in the slower of the surroundings.
+    /// When the fuse clears for certain, in the slower of the surroundings; never, if it cannot interrupt the full
+    /// current.
     pub(super) fn fuse_clears(&self, current: Amps) -> Option<Seconds> {
         let fuse = self.ratings().fuse.as_ref()?;
+        if fuse.breaking.is_some_and(|most| self.arranged.short_full.current > most) {
+            return None;
+        }
         let [a, b] = self.cases().map(|(_, t)| arrangements::fuse_time(fuse, current, t).latest);
         Some(Seconds(a?.0.max(b?.0)))
     }

@@ -38,7 +38,7 @@ impl<'a> Look<'_, 'a> {
             )));
             return;
         }
-        // Of the surroundings and charges in which no stage opens, the one with the least current.
+        // Of the surroundings and charges in which no stage opens, the gravest; of equals, the first.
         let mut worst: Option<(Level, Kind)> = None;
         for (case, setup, start, short) in &shorts {
             let opens = arrangements::opens_on_short(setup, start);
@@ -163,6 +163,7 @@ impl<'a> Look<'_, 'a> {
             .filter(|l| l.by != By::Fuse)
             .filter_map(|l| l.full)
             .map(|band| band.high)
+            .filter(|i| i.is_finite())
             .reduce(f64::min);
         found.check(lasting.filter(|i| *i > continuous.0).map(|i| {
             let level = if i > LETS_THROUGH_LOOK * continuous.0 { Level::Look } else { Level::Note };
@@ -277,9 +278,13 @@ fn probes(charge: &ChargeReport, setup: &Setup) -> Vec<PressStart> {
         .collect()
 }
 
+/// Bound on the events of such a press: an arc that flickers has thousands.
+const PROBE_EVENTS: u32 = 500;
+
 /// The current stage that opens in a press, and the current just before.
 fn opened(setup: &Setup, start: &PressStart) -> Option<(Limit, Amps)> {
-    let summary = press::run(setup, start, &PressOptions::default()).summary;
+    let options = PressOptions { max_events: PROBE_EVENTS, ..PressOptions::default() };
+    let summary = press::run(setup, start, &options).summary;
     match summary.end {
         PressEnd::Opened(limit @ Limit::Stage(..)) => Some((limit, summary.current_end)),
         _ => None,

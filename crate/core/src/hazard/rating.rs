@@ -7,7 +7,7 @@ use super::{
 };
 use crate::arrangements;
 use crate::ratings::Contact;
-use crate::report::{ChargeReport, Protector};
+use crate::report::{ChargeReport, Limit, PressEnd, Protector};
 use crate::units::{Amps, Celsius, Seconds, Volts};
 
 impl Look<'_, '_> {
@@ -38,8 +38,11 @@ impl Look<'_, '_> {
         found.check(
             level.map(|level| (level, Kind::CellOverRating { draw, effective, continuous, pulse, lasts })),
         );
-        let lowest =
-            charges(self.c).flat_map(|r| &r.presses).fold(f64::INFINITY, |m, p| m.min(p.summary.cell_end.0));
+        // A press that a stage opens may end in its inrush, which the cell stands.
+        let lowest = charges(self.c)
+            .flat_map(|r| &r.presses)
+            .filter(|p| !matches!(p.summary.end, PressEnd::Opened(Limit::Stage(..))))
+            .fold(f64::INFINITY, |m, p| m.min(p.summary.cell_end.0));
         found.check((lowest < cell.voltage_min.0).then(|| {
             let level = if lowest < DAMAGE_BELOW.0 { Level::Stop } else { Level::Look };
             (level, Kind::CellBelowWindow { lowest: Volts(lowest), limit: cell.voltage_min })
