@@ -4,14 +4,14 @@
 //! The designs are flat ones, so that currents and temperatures are formulas. A side is a ten-thousandth from the
 //! threshold, or what the test says.
 
-use strikeline_core::arrangements::{self, By, Corners, Given};
+use strikeline_core::arrangements::{self, By, Given};
 use strikeline_core::board::{Board, OverDischarge, Threshold};
 use strikeline_core::charge;
 use strikeline_core::hazard::{
     self, Case, Circumstances, ContactPart, Hazards, Kind, Level, NotJudged, StoredTier, hazards,
 };
 use strikeline_core::load::LitDraw;
-use strikeline_core::margins;
+use strikeline_core::margins::{self, Corners};
 use strikeline_core::math::{Monotone, Polyline};
 use strikeline_core::press::PressStart;
 use strikeline_core::ratings::{
@@ -131,11 +131,15 @@ impl Design {
             setup.usage.ambient = self.ratings.keeping.cold;
             charge::run(&setup)
         });
+        let with = |board: &Option<Board>| {
+            let mut setup = self.nominal.clone();
+            setup.board = board.clone().or(setup.board);
+            setup
+        };
+        let (low, high) = (with(&self.early), with(&self.late));
         hazards(&Circumstances {
-            nominal: &self.nominal,
+            corners: Corners { low: &low, typical: &self.nominal, high: &high },
             weak: &self.nominal,
-            board: Corners { early: self.early.as_ref(), late: self.late.as_ref() },
-            second: Corners::default(),
             charge: &charged,
             weak_charge: None,
             cold_charge: cold.as_ref(),
@@ -396,11 +400,10 @@ fn exact_layers_of_the_four_arrangements() {
     });
     d.ratings.fuse = Some(quick(5.0));
     let charged = charge::run(&d.nominal);
-    let (early, late) = (board_at(0.12), board_at(0.18));
+    let (mut low, mut high) = (d.nominal.clone(), d.nominal.clone());
+    (low.board, high.board) = (Some(board_at(0.12)), Some(board_at(0.18)));
     let given = Given {
-        setup: &d.nominal,
-        board: Corners { early: Some(&early), late: Some(&late) },
-        second: Corners::default(),
+        corners: Corners { low: &low, typical: &d.nominal, high: &high },
         charge: &charged,
         ratings: &d.ratings,
     };
@@ -637,6 +640,16 @@ fn exact_stored_energy_and_high_voltage() {
     edge("45 µC at 5 kV", stored(StoredTier::Charge), output(5e3), around(9e-9, NONE, STOP));
     edge("45 µC at 15 kV", stored(StoredTier::Charge), output(15e3), around(3e-9, NONE, STOP));
     edge("350 mJ at 20 kV", stored(StoredTier::Energy), output(20e3), around(1.75e-9, NONE, STOP));
+    for (volts, tier) in [
+        (42.4, None),
+        (42.41, Some(StoredTier::Capacitance)),
+        (450.0, Some(StoredTier::Capacitance)),
+        (450.1, Some(StoredTier::Charge)),
+        (15e3, Some(StoredTier::Charge)),
+        (15_001.0, Some(StoredTier::Energy)),
+    ] {
+        assert_eq!(hazard::stored_tier(Volts(volts)), tier, "{volts} V");
+    }
     let any = is!(Kind::StoredEnergy { .. });
     edge("1 mF at 42.4 V", any, output(42.4), [(1e-3, NONE), (1e-2, NONE)]);
     edge("1 mF at 42.5 V", any, output(42.5), [(1e-8, NONE), (1e-3, STOP)]);
@@ -1182,9 +1195,7 @@ fn of_the_rest() -> Vec<Printed> {
     drained.nominal.usage.standby = Amps(3e-6);
     let charged = charge::run(&drained.nominal);
     let given = Given {
-        setup: &drained.nominal,
-        board: Corners::default(),
-        second: Corners::default(),
+        corners: Corners { low: &drained.nominal, typical: &drained.nominal, high: &drained.nominal },
         charge: &charged,
         ratings: &drained.ratings,
     };

@@ -11,6 +11,7 @@
 use crate::board::{Board, SensePoint, Stage, Threshold};
 use crate::cell::MAX_BRANCHES;
 use crate::circuit::{Circuit, PathNow};
+use crate::margins::Corners;
 use crate::math::exp;
 use crate::press::PressStart;
 use crate::ratings::{Band, Fuse, FuseKind, LeadRating, OverCharge, Ratings};
@@ -29,26 +30,12 @@ pub const ALL: [Arrangement; 4] =
 /// Source: IEC 60364-5-54, annex A.
 pub const COPPER_HEAT: f64 = 3.45e-3;
 
-/// A protector with its tolerances at their two ends.
-#[derive(Debug, Clone, Copy, PartialEq, Default)]
-pub struct Corners<'a> {
-    /// Opens at the lowest current and soonest: thresholds low, on-resistance high, delays short, over-discharge
-    /// threshold high. `None`: the nominal one.
-    pub early: Option<&'a Board>,
-    /// Opens at the highest current and latest. `None`: the nominal one.
-    pub late: Option<&'a Board>,
-}
-
 /// What the comparison starts from.
 #[derive(Debug, Clone, Copy)]
 pub struct Given<'a> {
-    /// Nominal parts, as they are wired.
-    pub setup: &'a Setup,
-    /// Tolerance of the board.
-    pub board: Corners<'a>,
-    /// Tolerance of the second protector.
-    pub second: Corners<'a>,
-    /// The charge of `setup`.
+    /// The nominal parts as they are wired, and their protectors at both ends of the tolerances.
+    pub corners: Corners<'a>,
+    /// The charge of the nominal parts.
     pub charge: &'a ChargeReport,
     /// Ratings and what surrounds the parts.
     pub ratings: &'a Ratings,
@@ -169,7 +156,8 @@ pub fn compare(given: &Given<'_>) -> [Arranged; 4] {
 
 /// One arrangement of a design.
 pub fn arranged(given: &Given<'_>, arrangement: Arrangement) -> Arranged {
-    let setup = wired(given.setup, arrangement);
+    let Corners { low, typical, high } = given.corners;
+    let [low, setup, high] = [low, typical, high].map(|setup| wired(setup, arrangement));
     let ambient = setup.usage.ambient;
     let leads = &given.ratings.leads;
     let (full, empty) =
@@ -179,9 +167,13 @@ pub fn arranged(given: &Given<'_>, arrangement: Arrangement) -> Arranged {
     let mut over_current = Vec::new();
     let mut short = Vec::new();
     let mut over_discharge = Vec::new();
-    for (protector, trio) in protectors(given, &setup) {
-        let [early, typical, late] = trio.map(|board| with_protector(&setup, protector, board));
-        let three = [(&early, trio[0]), (&typical, trio[1]), (&late, trio[2])];
+    for protector in [Protector::Board, Protector::Second] {
+        let setups = [&low, &setup, &high];
+        let [Some(early), Some(nominal), Some(late)] = setups.map(|setup| in_path(setup, protector)) else {
+            continue;
+        };
+        let trio = [early, nominal, late];
+        let three = [(&low, early), (&setup, nominal), (&high, late)];
         for index in 0..trio[1].stages.len() {
             let at = |start: &PressStart| {
                 let [low, mid, high] = three.map(|(setup, board)| {
@@ -206,7 +198,7 @@ pub fn arranged(given: &Given<'_>, arrangement: Arrangement) -> Arranged {
                 delay: Some(figure(|stage| stage.delay.0)),
             };
             over_current.push(layer);
-            if [&full, &empty].into_iter().all(|start| stage_sees_short(&late, protector, index, start)) {
+            if [&full, &empty].into_iter().all(|start| stage_sees_short(&high, protector, index, start)) {
                 short.push(layer);
             }
         }
@@ -254,31 +246,12 @@ pub fn wired(setup: &Setup, arrangement: Arrangement) -> Setup {
     Setup { arrangement, ..setup.clone() }
 }
 
-/// The same design with another board or second protector.
-pub fn with_protector(setup: &Setup, protector: Protector, board: &Board) -> Setup {
-    let mut setup = setup.clone();
+/// A protector, where it stands in the load's path.
+pub fn in_path(setup: &Setup, protector: Protector) -> Option<&Board> {
     match protector {
-        Protector::Board => setup.board = Some(board.clone()),
-        Protector::Second => setup.second_protector = Some(board.clone()),
+        Protector::Board => setup.board_in_path(),
+        Protector::Second => setup.second_protector.as_ref(),
     }
-    setup
-}
-
-/// The protectors in the load's path, each as early, nominal, late.
-fn protectors<'a>(given: &Given<'a>, setup: &Setup) -> Vec<(Protector, [&'a Board; 3])> {
-    let trio = |corners: &Corners<'a>, board: &'a Board| {
-        [corners.early.unwrap_or(board), board, corners.late.unwrap_or(board)]
-    };
-    let mut list = Vec::new();
-    if setup.board_in_path().is_some()
-        && let Some(board) = &given.setup.board
-    {
-        list.push((Protector::Board, trio(&given.board, board)));
-    }
-    if let Some(second) = &given.setup.second_protector {
-        list.push((Protector::Second, trio(&given.second, second)));
-    }
-    list
 }
 
 fn band_of([a, typical, b]: [f64; 3]) -> Band {
@@ -293,14 +266,14 @@ fn charge_layers(
     by: fn(Protector) -> By,
     of: fn(&OverCharge) -> Option<Band>,
 ) -> Vec<Layer> {
+    let setup = given.corners.typical;
     let board = match arrangement {
         Arrangement::ThroughBoard | Arrangement::LoadAtCell => {
-            given.setup.board.as_ref().zip(given.ratings.board_over_charge.as_ref())
+            setup.board.as_ref().zip(given.ratings.board_over_charge.as_ref())
         }
         Arrangement::SwitchBridged | Arrangement::NoBoard => None,
     };
-    let second = given.setup.second_protector.as_ref().zip(given.ratings.second_over_charge.as_ref());
-    let setup = given.setup;
+    let second = setup.second_protector.as_ref().zip(given.ratings.second_over_charge.as_ref());
     let mut layers = Vec::new();
     for (protector, pair) in [(Protector::Board, board), (Protector::Second, second)] {
         let Some((board, over_charge)) = pair else { continue };
@@ -408,11 +381,7 @@ pub fn trip_needed(
 
 /// Whether a stage is exceeded by a short circuit at the load.
 fn stage_sees_short(setup: &Setup, protector: Protector, index: usize, start: &PressStart) -> bool {
-    let board = match protector {
-        Protector::Board => setup.board_in_path(),
-        Protector::Second => setup.second_protector.as_ref(),
-    };
-    let Some(stage) = board.and_then(|b| b.stages.get(index)) else { return false };
+    let Some(stage) = in_path(setup, protector).and_then(|b| b.stages.get(index)) else { return false };
     shorted(setup, start).current > trip_needed(setup, protector, stage, start, 1.0).0
 }
 
@@ -560,13 +529,13 @@ pub fn after(press: &PressSummary) -> PressStart {
 
 /// Standby from the recharge mark to empty; from the end of the charge where no press was full.
 fn standby(given: &Given<'_>) -> Option<Seconds> {
-    let draw = given.setup.usage.standby.0;
+    let draw = given.corners.typical.usage.standby.0;
     if draw <= 0.0 {
         return None;
     }
     let full = given.charge.presses.iter().rev().find(|p| p.summary.not_full.is_none());
     let soc = full.map_or(given.charge.soc_left, |p| p.summary.soc_end);
-    Some(Seconds(soc * given.setup.cell.charge_as() / draw))
+    Some(Seconds(soc * given.corners.typical.cell.charge_as() / draw))
 }
 
 /// The largest part of the charge that one step of a held button takes.

@@ -12,7 +12,8 @@ mod law;
 mod opening;
 mod rating;
 
-use crate::arrangements::{Arranged, By, Corners, Given, Held, ShortCircuit};
+use crate::arrangements::{Arranged, By, Given, Held, ShortCircuit};
+use crate::margins::Corners;
 use crate::ratings::{Band, Ratings};
 use crate::report::{ChargeReport, Limit, Protector};
 use crate::setup::{Arrangement, Setup};
@@ -547,14 +548,10 @@ impl Hazards {
 /// What the checks look at.
 #[derive(Debug, Clone, Copy)]
 pub struct Circumstances<'a> {
-    /// Nominal parts as they are wired.
-    pub nominal: &'a Setup,
+    /// The nominal parts as they are wired, and their protectors at both ends of the tolerances.
+    pub corners: Corners<'a>,
     /// Every tolerance at its unfavourable end.
     pub weak: &'a Setup,
-    /// The board's tolerance.
-    pub board: Corners<'a>,
-    /// The second protector's tolerance.
-    pub second: Corners<'a>,
     /// The charge of the nominal parts.
     pub charge: &'a ChargeReport,
     /// The charge of the weak parts.
@@ -569,8 +566,7 @@ pub struct Circumstances<'a> {
 
 /// All checks on one design.
 pub fn hazards(c: &Circumstances<'_>) -> Hazards {
-    let given =
-        Given { setup: c.nominal, board: c.board, second: c.second, charge: c.charge, ratings: c.ratings };
+    let given = Given { corners: c.corners, charge: c.charge, ratings: c.ratings };
     let look = Look::new(c, &given);
     let mut found = Hazards::default();
     look.short(&mut found);

@@ -38,14 +38,18 @@ pub(super) fn steady_draw(c: &Circumstances<'_>) -> Amps {
         .filter(|p| p.summary.end_mode == Mode::Lit)
         .map(|p| p.summary.current_end.0)
         .reduce(f64::max);
-    let would = || margins::end_of_press(c.nominal, 1.0, c.nominal.usage.ambient).1.map(|s| s.current.0);
+    let would = || {
+        margins::end_of_press(c.corners.typical, 1.0, c.corners.typical.usage.ambient).1.map(|s| s.current.0)
+    };
     Amps(lit.or_else(would).unwrap_or(0.0))
 }
 
 /// The checks, with what several of them need.
 pub(super) struct Look<'c, 'a> {
     pub(super) c: &'c Circumstances<'a>,
-    /// As it is wired.
+    /// The nominal parts.
+    pub(super) nominal: &'a Setup,
+    /// As they are wired.
     pub(super) arranged: Arranged,
     /// Largest steady draw of a press, all cells.
     pub(super) draw: Amps,
@@ -62,7 +66,8 @@ impl<'c, 'a> Look<'c, 'a> {
     pub(super) fn new(c: &'c Circumstances<'a>, given: &Given<'a>) -> Self {
         Self {
             c,
-            arranged: arrangements::arranged(given, c.nominal.arrangement),
+            nominal: c.corners.typical,
+            arranged: arrangements::arranged(given, c.corners.typical.arrangement),
             draw: steady_draw(c),
             peak: Amps(
                 charges(c).flat_map(|r| &r.presses).fold(0.0, |m: f64, p| m.max(p.summary.peak_current.0)),
@@ -75,7 +80,7 @@ impl<'c, 'a> Look<'c, 'a> {
     }
 
     pub(super) fn parallel(&self) -> f64 {
-        f64::from(self.c.nominal.cell.parallel)
+        f64::from(self.nominal.cell.parallel)
     }
 
     pub(super) fn closed(&self) -> f64 {
@@ -87,19 +92,20 @@ impl<'c, 'a> Look<'c, 'a> {
     }
 
     pub(super) fn cases(&self) -> [(Case, Celsius); 2] {
-        [(Case::Ambient, self.c.nominal.usage.ambient), (Case::Cold, self.ratings().keeping.cold)]
+        [(Case::Ambient, self.nominal.usage.ambient), (Case::Cold, self.ratings().keeping.cold)]
     }
 
     /// Weak parts with the protectors at their late corner, at an ambient temperature.
     pub(super) fn weak_and_late(&self, ambient: Celsius) -> Setup {
-        let mut setup = arrangements::wired(self.c.weak, self.c.nominal.arrangement);
+        self.with_boards_of(self.c.corners.high, self.c.weak, ambient)
+    }
+
+    /// Parts with the protectors of another corner, wired as the nominal ones, at an ambient temperature.
+    pub(super) fn with_boards_of(&self, corner: &Setup, parts: &Setup, ambient: Celsius) -> Setup {
+        let mut setup = arrangements::wired(parts, self.nominal.arrangement);
         setup.usage.ambient = ambient;
-        if let Some(board) = self.c.board.late.or(self.c.nominal.board.as_ref()) {
-            setup.board = Some(board.clone());
-        }
-        if let Some(board) = self.c.second.late.or(self.c.nominal.second_protector.as_ref()) {
-            setup.second_protector = Some(board.clone());
-        }
+        setup.board = corner.board.clone();
+        setup.second_protector = corner.second_protector.clone();
         setup
     }
 

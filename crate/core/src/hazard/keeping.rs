@@ -19,7 +19,7 @@ impl Look<'_, '_> {
     }
 
     pub(super) fn wrong_cells(&self, found: &mut Hazards) {
-        let setup = self.c.nominal;
+        let setup = self.nominal;
         let cell = &setup.cell;
         let ambient = setup.usage.ambient;
         let full = cell.open_circuit(1.0, ambient);
@@ -76,7 +76,7 @@ impl Look<'_, '_> {
     }
 
     pub(super) fn keeping(&self, found: &mut Hazards) {
-        let cell_wh = transport_wh(self.c.nominal.cell.capacity);
+        let cell_wh = transport_wh(self.nominal.cell.capacity);
         let total_wh = cell_wh * self.parallel();
         let large = cell_wh > TRANSPORT_CELL_WH || total_wh > TRANSPORT_BATTERY_WH;
         let level = if large { Level::Look } else { Level::Note };

@@ -3,7 +3,7 @@
 use super::FUSE_HEAT_LOOK;
 use super::check::{Look, lead_limit};
 use super::{Case, Finding, Hazards, Kind, LETS_THROUGH_LOOK, Layers, Level, NotJudged};
-use crate::arrangements::{self, By, Corners, Given, ShortCircuit};
+use crate::arrangements::{self, By, Given, ShortCircuit};
 use crate::press::{self, PressOptions, PressStart};
 use crate::ratings::{Band, Fuse, FuseKind};
 use crate::report::{ChargeReport, Limit, PressEnd, Protector};
@@ -11,7 +11,7 @@ use crate::setup::{Arrangement, Setup};
 use crate::time_current;
 use crate::units::{Amps, Seconds, Volts, Watts};
 
-impl<'a> Look<'_, 'a> {
+impl Look<'_, '_> {
     pub(super) fn short(&self, found: &mut Hazards) {
         let shorts = self.weak_shorts();
         let electronic = self.arranged.over_current.iter().any(|l| l.by != By::Fuse);
@@ -28,7 +28,7 @@ impl<'a> Look<'_, 'a> {
             found.check(Some((
                 level,
                 Kind::ShortUnprotected {
-                    arrangement: self.c.nominal.arrangement,
+                    arrangement: self.nominal.arrangement,
                     full: full.clone(),
                     weakest: weakest.current,
                     lead_limit: lead_limit(full),
@@ -94,27 +94,16 @@ impl<'a> Look<'_, 'a> {
                 Case::Ambient => Some(self.c.charge),
                 Case::Cold => self.c.cold_charge,
             };
-            let same = case == Case::Cold && ambient == self.c.nominal.usage.ambient;
+            let same = case == Case::Cold && ambient == self.nominal.usage.ambient;
             let Some(charge) = charge else {
                 if !same {
                     found.cannot(NotJudged::ColdCharge);
                 }
                 continue;
             };
-            let with = |setup: &Setup, early: bool| {
-                let mut setup = arrangements::wired(setup, self.c.nominal.arrangement);
-                setup.usage.ambient = ambient;
-                let pick = |corners: &Corners<'a>| if early { corners.early } else { corners.late };
-                if let Some(board) = pick(&self.c.board).or(self.c.nominal.board.as_ref()) {
-                    setup.board = Some(board.clone());
-                }
-                if let Some(board) = pick(&self.c.second).or(self.c.nominal.second_protector.as_ref()) {
-                    setup.second_protector = Some(board.clone());
-                }
-                setup
-            };
-            let early = [with(self.c.nominal, true), with(self.c.weak, true)];
-            let late = with(self.c.nominal, false);
+            let corners = &self.c.corners;
+            let early = [self.nominal, self.c.weak].map(|s| self.with_boards_of(corners.low, s, ambient));
+            let late = self.with_boards_of(corners.high, self.nominal, ambient);
             let mut trips: Vec<(Limit, Kind)> = Vec::new();
             for start in probes(charge, &early[0]) {
                 for setup in &early {
@@ -150,7 +139,7 @@ impl<'a> Look<'_, 'a> {
                 arrangements::trip_needed(setup, protector, stage, start, 1.0).0
             })
         };
-        Band { low: of(early), typical: of(self.c.nominal), high: of(late) }
+        Band { low: of(early), typical: of(self.nominal), high: of(late) }
     }
 
     pub(super) fn lets_through(&self, found: &mut Hazards) {
@@ -196,7 +185,7 @@ impl<'a> Look<'_, 'a> {
         self.fuse_on_load(found, fuse);
         let delay = self.arranged.short_circuit.iter().filter(|l| l.by != By::Fuse).filter_map(|l| l.delay);
         let protector = delay.map(|d| d.high).reduce(f64::min);
-        let ambient = self.c.nominal.usage.ambient;
+        let ambient = self.nominal.usage.ambient;
         let earliest = arrangements::fuse_time(fuse, prospective, ambient).earliest;
         found.check(
             protector
@@ -214,9 +203,9 @@ impl<'a> Look<'_, 'a> {
     }
 
     pub(super) fn fuse_on_load(&self, found: &mut Hazards, fuse: &Fuse) {
-        let ambient = self.c.nominal.usage.ambient;
+        let ambient = self.nominal.usage.ambient;
         let earliest = arrangements::fuse_time(fuse, self.draw, ambient).earliest;
-        let lasts = self.c.nominal.usage.press.0.max(3600.0 * self.ratings().keeping.held_hours);
+        let lasts = self.nominal.usage.press.0.max(3600.0 * self.ratings().keeping.held_hours);
         // What it carries for good: a fuse's rated current, a PTC's hold current at this temperature.
         let rating = match fuse.kind {
             FuseKind::Ptc { .. } => Amps(arrangements::fuse_band(fuse, ambient).low),

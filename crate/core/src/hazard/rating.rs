@@ -13,7 +13,7 @@ use crate::units::{Amps, Celsius, Seconds, Volts};
 impl Look<'_, '_> {
     pub(super) fn cell_use(&self, found: &mut Hazards) {
         let cell = &self.ratings().cell;
-        let usage = &self.c.nominal.usage;
+        let usage = &self.nominal.usage;
         let draw = self.draw / self.parallel();
         let cycle = usage.press.0 + usage.rest.0;
         let effective = draw * (usage.press.0 / cycle).sqrt();
@@ -57,7 +57,7 @@ impl Look<'_, '_> {
     }
 
     pub(super) fn cell_heat(&self, found: &mut Hazards) {
-        let setup = self.c.nominal;
+        let setup = self.nominal;
         let ambient = setup.usage.ambient;
         let hottest = charges(self.c).fold(ambient.0, |m: f64, r| m.max(r.cell_temperature_max.0));
         let charge = Celsius(ambient.0 + (hottest - ambient.0) * self.closed());
@@ -76,8 +76,8 @@ impl Look<'_, '_> {
 
     /// The cell at the steady draw for as long as the button is held or the charge lasts.
     pub(super) fn held_cell(&self) -> Celsius {
-        let cell = &self.c.nominal.cell;
-        let ambient = self.c.nominal.usage.ambient;
+        let cell = &self.nominal.cell;
+        let ambient = self.nominal.usage.ambient;
         let i = self.draw.0;
         let slow = (0..cell.branches.len()).fold(0.0, |sum, k| sum + cell.branch_at(k, 0.5, ambient).0);
         let heat = i * i * (cell.r0_at(0.5, ambient).0 + slow);
@@ -88,7 +88,7 @@ impl Look<'_, '_> {
     }
 
     pub(super) fn switches(&self, found: &mut Hazards) {
-        let setup = self.c.nominal;
+        let setup = self.nominal;
         let ambient = setup.usage.ambient;
         let reached = |of: fn(&ChargeReport) -> Celsius| {
             let hottest = charges(self.c).fold(ambient.0, |m: f64, r| m.max(of(r).0));
@@ -126,7 +126,7 @@ impl Look<'_, '_> {
             found.cannot(NotJudged::Leads);
         }
         for lead in &self.ratings().leads {
-            let settled = settled_lead(lead, self.draw, self.c.nominal.usage.ambient, self.closed());
+            let settled = settled_lead(lead, self.draw, self.nominal.usage.ambient, self.closed());
             let above = |limit: Celsius| settled.is_none_or(|t| t > limit);
             found.check(above(lead.continuous).then(|| {
                 let level = if above(lead.last) { Level::Stop } else { Level::Look };
@@ -160,7 +160,7 @@ impl Look<'_, '_> {
         }
         match contact.voltage {
             Some(rating) => {
-                let voltage = self.c.nominal.cell.open_circuit(1.0, self.c.nominal.usage.ambient);
+                let voltage = self.nominal.cell.open_circuit(1.0, self.nominal.usage.ambient);
                 found.check(
                     (voltage > rating)
                         .then_some((Level::Look, Kind::ContactVoltage { part, voltage, rating })),
