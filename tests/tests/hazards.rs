@@ -33,6 +33,8 @@ struct Design {
     ratings: Ratings,
     /// Whether a charge at the coldest temperature is given.
     cold: bool,
+    /// What the weak parts have more in the path.
+    weak_ohm: f64,
     fuse_resistance: Option<Ohms>,
 }
 
@@ -88,7 +90,7 @@ fn sound() -> Design {
         },
         load_estimated: false,
     };
-    Design { nominal, early: None, late: None, ratings, cold: false, fuse_resistance: None }
+    Design { nominal, early: None, late: None, ratings, cold: false, weak_ohm: 0.0, fuse_resistance: None }
 }
 
 fn board() -> Board {
@@ -137,9 +139,11 @@ impl Design {
             setup
         };
         let (low, high) = (with(&self.early), with(&self.late));
+        let mut weak = self.nominal.clone();
+        weak.path.after = weak.path.after + Ohms(self.weak_ohm);
         hazards(&Circumstances {
             corners: Corners { low: &low, typical: &self.nominal, high: &high },
-            weak: &self.nominal,
+            weak: &weak,
             charge: &charged,
             weak_charge: None,
             cold_charge: cold.as_ref(),
@@ -309,6 +313,34 @@ fn exact_board_never_trips_on_a_short() {
     edge("fuse instead", never, fused, [(0.25, LOOK), (1.45, STOP)]);
 }
 
+/// The current at which a quick fuse between 2.1 times its rating (1800 s) and 2.75 times (3 s) takes as long as the
+/// lead stands: both are straight lines over the logarithm of the current.
+fn fuse_meets_lead(rating: f64) -> f64 {
+    let k2s2 = (226.0 * 0.75 * (394.5_f64 / 304.5).ln().sqrt()).powi(2);
+    let slope = 600.0_f64.ln() / (2.75_f64 / 2.1).ln();
+    (((1800.0 / k2s2).ln() + slope * (2.1 * rating).ln()) / (slope - 2.0)).exp()
+}
+
+#[test]
+fn exact_the_gravest_short_is_told() {
+    // Full, 2.98 A open the fuse in time; empty, the current may be too small for that, and nothing opens.
+    let never = is!(Kind::NeverTripsOnShort { .. });
+    let design = |d: &mut Design, empty: f64| {
+        d.draw(0.5);
+        d.nominal.cell.ocv = Monotone::new(vec![0.0, 1.0], vec![empty, 3.7]).expect("two points");
+        d.nominal.path.after = Ohms(1.14);
+        d.ratings.fuse = Some(quick(1.0));
+    };
+    edge("empty cell", never, design, around(1.24 * fuse_meets_lead(1.0), STOP, LOOK));
+    // The stage is there, but it does not open on the short: a fuse that cannot interrupt it is all there is.
+    let breaking = is!(Kind::FuseBreaking { .. });
+    let small = |d: &mut Design, i: f64| {
+        design(d, 2.7);
+        d.ratings.fuse = Some(Fuse { breaking: Some(Amps(i)), ..quick(1.0) });
+    };
+    edge("breaking capacity", breaking, small, around(3.7 / 1.24, STOP, NONE));
+}
+
 #[test]
 fn exact_short_without_protection() {
     let bare = is!(Kind::ShortUnprotected { .. });
@@ -329,6 +361,13 @@ fn exact_short_without_protection() {
         d.ratings.fuse = Some(quick(rating));
     };
     edge("fuse against the lead", bare, fused, around(37.0 / multiple, LOOK, STOP));
+    // At 37 A it is in time; with weak parts the current may be too small for that.
+    let weak = |d: &mut Design, ohm: f64| {
+        fused(d, 3.7);
+        d.weak_ohm = ohm;
+    };
+    let until = 3.7 / fuse_meets_lead(3.7) - 0.1;
+    edge("weak parts", bare, weak, around(until, LOOK, STOP));
     // It counts only if it can interrupt the current.
     let breaking = |d: &mut Design, i: f64| {
         fused(d, 5.0);
@@ -372,6 +411,10 @@ fn exact_what_an_arrangement_loses() {
     let found = d.look();
     assert_eq!((level(&found, loses), level(&found, bare)), (STOP, STOP));
     assert!(found.has_stop());
+    // A fuse is left against a short circuit, and nothing against over-discharge.
+    d.ratings.fuse = Some(quick(3.0));
+    assert_eq!(level(&d.look(), loses), STOP);
+    d.ratings.fuse = None;
     // A second protector in the wrap stays in the path.
     d.nominal.second_protector = Some(board());
     let found = d.look();
@@ -508,6 +551,20 @@ fn exact_held_button() {
     assert!((opened.0 / (at(2.8) + 0.04) - 1.0).abs() < 1e-5, "{opened}");
     near("3.0 V before it opens", held.to_3_0, at(3.0));
     assert_eq!((held.to_2_5, held.to_2_0, held.to_empty), (None, None, None));
+    // One that opens at 1.9 V is not reached before the cell is empty, and then at once; 2.0 V comes before it.
+    let mut late = through.clone();
+    late.board.as_mut().expect("a board").over_discharge =
+        Some(OverDischarge { threshold: Volts(1.9), delay: Seconds(0.04) });
+    late.cell.ocv = Monotone::new(vec![0.0, 1.0], vec![2.4, 4.0]).expect("two points");
+    let held = arrangements::held(&late, &start);
+    let empty = held.to_empty.expect("it runs out");
+    let (protector, opened) = held.opened.expect("it opens");
+    assert_eq!((protector, opened), (Protector::Board, Seconds(empty.0 + 0.04)));
+    assert_eq!(held.to_2_0, Some(empty));
+    assert!(held.to_2_5.expect("it falls").0 < empty.0);
+    late.board.as_mut().expect("a board").over_discharge =
+        Some(OverDischarge { threshold: Volts(2.2), delay: Seconds(0.04) });
+    assert_eq!(arrangements::held(&late, &start).to_2_0, None, "it opens at 2.2 V");
     // Branches that have settled are resistance: 0.3 Ω behind 20 s and 0.2 Ω at once are 0.5 Ω to 10⁻³ of an hour.
     let mut slow = d.nominal.clone();
     slow.cell.r0 = Ohms(0.2);

@@ -117,8 +117,8 @@ pub struct Held {
     pub to_2_5: Option<Seconds>,
     /// Until 2.0 V.
     pub to_2_0: Option<Seconds>,
-    /// Until the model's cell is empty. Below that a real cell has hardly any charge, so a voltage that the model
-    /// has not reached by then is given this time.
+    /// Until the model's cell is empty. Below that a real cell has hardly any charge: what the model has not reached by
+    /// then, voltage or over-discharge detection, is given this time.
     pub to_empty: Option<Seconds>,
     /// Which over-discharge detection opens, and when.
     pub opened: Option<(Protector, Seconds)>,
@@ -626,14 +626,22 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
         }
         if empties {
             result.to_empty = Some(Seconds(t));
+            // What is left of the voltage goes at once, through every level and threshold below it.
+            let detects = limits.iter().filter_map(|(protector, limit)| limit.map(|od| (*protector, od)));
+            let first = detects.reduce(|a, b| if b.1.threshold > a.1.threshold { b } else { a });
+            let down_to = first.map_or(0.0, |(_, od)| od.threshold.0);
+            for (reached, level) in reached.iter_mut().zip(levels) {
+                if reached.is_none() && level >= down_to {
+                    *reached = Some(t);
+                }
+            }
+            result.opened = first.map(|(protector, od)| (protector, Seconds(t + od.delay.0)));
             break;
         }
         state = to;
         h *= HELD_GROWS;
     }
-    // Empty and never opened: what the model did not reach comes right after.
-    let or_empty = |at: Option<f64>| at.map(Seconds).or(result.to_empty);
-    [result.to_3_0, result.to_2_5, result.to_2_0] = reached.map(or_empty);
+    [result.to_3_0, result.to_2_5, result.to_2_0] = reached.map(|at| at.map(Seconds));
     result
 }
 

@@ -362,7 +362,7 @@ pub enum Kind {
         /// Shortest time of a lead to its limit.
         lead_limit: Option<Seconds>,
     },
-    /// The fuse may open on the load within a press. Look.
+    /// The draw is above what the fuse carries for good: it may open on the load, in a press or a held one. Look.
     FuseOpensOnLoad {
         /// Steady draw.
         draw: Amps,

@@ -205,15 +205,15 @@ impl Look<'_, '_> {
     pub(super) fn fuse_on_load(&self, found: &mut Hazards, fuse: &Fuse) {
         let ambient = self.nominal.usage.ambient;
         let earliest = arrangements::fuse_time(fuse, self.draw, ambient).earliest;
-        let lasts = self.nominal.usage.press.0.max(3600.0 * self.ratings().keeping.held_hours);
         // What it carries for good: a fuse's rated current, a PTC's hold current at this temperature.
         let rating = match fuse.kind {
             FuseKind::Ptc { .. } => Amps(arrangements::fuse_band(fuse, ambient).low),
             _ => fuse.rating,
         };
-        let opens = earliest.is_some_and(|t| t.0 <= lasts) || self.draw > rating;
+        // No fuse opens at a current that it carries for good.
         found.check(
-            opens.then_some((Level::Look, Kind::FuseOpensOnLoad { draw: self.draw, rating, earliest })),
+            (self.draw > rating)
+                .then_some((Level::Look, Kind::FuseOpensOnLoad { draw: self.draw, rating, earliest })),
         );
     }
 }
