@@ -10,7 +10,9 @@ use strikeline_tests::browser::{Browser, Scheme};
 
 fn report_of(design: &Design) -> String {
     let checked = check(design).expect("sound");
-    report::json(&design.name, &checked, &report::answer(&checked), report::Extras::default()).to_string()
+    let answers = report::answer(&checked);
+    let further = report::further(&checked, &answers);
+    report::json(&design.name, &checked, &answers, &further, report::Extras::default()).to_string()
 }
 
 async fn whole_path(browser: &Browser) {

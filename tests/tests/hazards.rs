@@ -35,7 +35,6 @@ struct Design {
     cold: bool,
     /// What the weak parts have more in the path.
     weak_ohm: f64,
-    fuse_resistance: Option<Ohms>,
 }
 
 /// 3.7 V behind 50 mΩ, a 50 mΩ board that trips at 3 A and at 2.4 V, 2 A for 0.1 s: nothing is wrong with it.
@@ -90,7 +89,7 @@ fn sound() -> Design {
         },
         load_estimated: false,
     };
-    Design { nominal, early: None, late: None, ratings, cold: false, weak_ohm: 0.0, fuse_resistance: None }
+    Design { nominal, early: None, late: None, ratings, cold: false, weak_ohm: 0.0 }
 }
 
 fn board() -> Board {
@@ -122,7 +121,7 @@ fn lead(area_mm2: f64) -> LeadRating {
 }
 
 fn quick(rating: f64) -> Fuse {
-    Fuse { rating: Amps(rating), kind: FuseKind::Quick, breaking: Some(Amps(1500.0)) }
+    Fuse { rating: Amps(rating), kind: FuseKind::Quick, breaking: Some(Amps(1500.0)), resistance: None }
 }
 
 impl Design {
@@ -148,7 +147,6 @@ impl Design {
             weak_charge: None,
             cold_charge: cold.as_ref(),
             ratings: &self.ratings,
-            fuse_resistance: self.fuse_resistance,
         })
     }
 
@@ -933,7 +931,9 @@ fn exact_fuses() {
     let heat = is!(Kind::FuseHeat { .. });
     let ohm = |d: &mut Design, r: f64| {
         rating(d, 3.0);
-        d.fuse_resistance = Some(Ohms(r));
+        if let Some(fuse) = &mut d.ratings.fuse {
+            fuse.resistance = Some(Ohms(r));
+        }
     };
     edge("1.6 W in the fuse", heat, ohm, around(0.4, NONE, LOOK));
     let mut d = sound();

@@ -352,7 +352,8 @@ fn published_short_circuit_currents() {
 
 #[test]
 fn published_fuse_gates() {
-    let fuse = |kind: FuseKind, rating: f64| Fuse { rating: Amps(rating), kind, breaking: None };
+    let fuse =
+        |kind: FuseKind, rating: f64| Fuse { rating: Amps(rating), kind, breaking: None, resistance: None };
     let times = |f: &Fuse, multiple: f64| {
         let (earliest, latest) = time_current::fuse_times(f, Amps(multiple * f.rating.0));
         (earliest.map(|t| t.0), latest.map(|t| t.0))

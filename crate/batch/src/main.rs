@@ -11,7 +11,7 @@ use strikeline_design::report::{self, Extras};
 use strikeline_design::{file, link, shipped};
 
 const USAGE: &str = "\
-strikeline-batch [--events] [--trace] [--presses] [--board CLASS] design.json …
+strikeline-batch [--events] [--trace] [--presses] [--margins] [--board CLASS] design.json …
     one JSON report per design, a line each; what cannot be used is named on standard error
 strikeline-batch replay design.json log.csv [--soc X] [--temperature T] [--json]
     the design's cell under a recorded current (columns time_s, current_A; optional voltage_V, temperature_C)
@@ -93,6 +93,7 @@ fn reports(words: &[&str]) -> Result<Said, String> {
             "--events" => extras.events = true,
             "--trace" => extras.trace = true,
             "--presses" => extras.presses = true,
+            "--margins" => extras.margins = true,
             flag if flag.starts_with("--") => return Err(format!("{flag} is not an option\n{USAGE}")),
             path => paths.push(path),
         }
@@ -118,7 +119,8 @@ fn report_of(path: &str, class: Option<&shipped::BoardClass>, extras: Extras) ->
     }
     let checked = checked(path, &design)?;
     let answers = report::answer(&checked);
-    Ok(report::json(&design.name, &checked, &answers, extras).to_string())
+    Ok(report::json(&design.name, &checked, &answers, &report::further(&checked, &answers), extras)
+        .to_string())
 }
 
 fn read(path: &str) -> Result<String, String> {

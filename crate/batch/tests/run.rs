@@ -117,7 +117,7 @@ fn exact_what_is_wrong_is_said_with_2() {
 fn exact_a_class_of_board_takes_the_place_of_the_designs_own() {
     let folder = Folder::new("boards");
     let short = folder.file("short.json", SHORT);
-    let none = r#"{"strikeline": 2, "name": "short", "cell": {"capacity": 2.28}, "board": {"arrangement": "no_board"}}"#;
+    let none = r#"{"strikeline": 1, "name": "short", "cell": {"capacity": 2.28}, "board": {"arrangement": "no_board"}}"#;
     let none = folder.file("none.json", none);
     let output = run(&["--board", "none", &short]);
     assert_eq!(output.status.code(), Some(0));

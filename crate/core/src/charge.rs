@@ -28,7 +28,13 @@ pub fn run(setup: &Setup) -> ChargeReport {
 /// Simulates a charge from another place than full and relaxed, with a bound of its own beside
 /// [`STEPS_PER_PRESS`].
 pub fn run_from(setup: &Setup, start: &PressStart, max_steps: u64) -> ChargeReport {
-    follow(setup, start, max_steps).0
+    follow(setup, start, max_steps, false).0
+}
+
+/// A charge that is followed to its first press that is not full, with that one; the end is then
+/// [`ChargeEnd::PressLimit`], unless the press ended the charge itself.
+pub fn run_full_presses(setup: &Setup) -> ChargeReport {
+    follow(setup, &PressStart::relaxed(setup, 1.0, setup.usage.ambient), MAX_STEPS, true).0
 }
 
 /// Where the press with this index in the charge begins, to look at it more closely; `None` if the
@@ -36,12 +42,13 @@ pub fn run_from(setup: &Setup, start: &PressStart, max_steps: u64) -> ChargeRepo
 pub fn press_start(setup: &Setup, index: usize) -> Option<PressStart> {
     let mut limited = setup.clone();
     limited.usage.max_presses = u32::try_from(index).ok()?.checked_add(1)?;
-    let (report, start) = follow(&limited, &PressStart::relaxed(setup, 1.0, setup.usage.ambient), u64::MAX);
+    let (report, start) =
+        follow(&limited, &PressStart::relaxed(setup, 1.0, setup.usage.ambient), u64::MAX, false);
     (report.presses.len() == index + 1).then_some(start)
 }
 
 /// A charge from `start`, and where its last press began.
-fn follow(setup: &Setup, start: &PressStart, max_steps: u64) -> (ChargeReport, PressStart) {
+fn follow(setup: &Setup, start: &PressStart, max_steps: u64, full_only: bool) -> (ChargeReport, PressStart) {
     let mut simulator = Simulator::new(setup, PressOptions::default().max_events);
     let mut y = start.state();
     let mut report = empty_report(setup);
@@ -85,7 +92,7 @@ fn follow(setup: &Setup, start: &PressStart, max_steps: u64) -> (ChargeReport, P
         if let (Some(why), true) = (not_full, lit.0 == 0.0) {
             break ChargeEnd::NoLitTime(why);
         }
-        if number >= setup.usage.max_presses {
+        if number >= setup.usage.max_presses || (full_only && not_full.is_some()) {
             break ChargeEnd::PressLimit;
         }
         if report.steps >= allowed {

@@ -17,7 +17,7 @@ use crate::margins::Corners;
 use crate::ratings::{Band, Ratings};
 use crate::report::{ChargeReport, Limit, Protector};
 use crate::setup::{Arrangement, Setup};
-use crate::units::{Amps, Celsius, Coulombs, Farads, Joules, Ohms, Seconds, Volts, Watts};
+use crate::units::{Amps, Celsius, Coulombs, Farads, Joules, Seconds, Volts, Watts};
 use check::Look;
 pub use law::{
     equalising_current, settled, settled_lead, settled_switch, stored_limit, stored_tier, transport_wh,
@@ -560,8 +560,6 @@ pub struct Circumstances<'a> {
     pub cold_charge: Option<&'a ChargeReport>,
     /// Ratings and what surrounds the parts.
     pub ratings: &'a Ratings,
-    /// Cold resistance of the fuse or PTC.
-    pub fuse_resistance: Option<Ohms>,
 }
 
 /// All checks on one design.

@@ -2,7 +2,7 @@
 //!
 //! An absent rating is not judged, and whoever judges says so.
 
-use crate::units::{Amps, Celsius, Coulombs, Farads, Seconds, Volts, Watts};
+use crate::units::{Amps, Celsius, Coulombs, Farads, Ohms, Seconds, Volts, Watts};
 
 /// A value with its tolerance, in the unit of whoever holds it; low ≤ typical ≤ high.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -97,6 +97,8 @@ pub struct Fuse {
     pub kind: FuseKind,
     /// Largest current it can interrupt at this voltage; `None`: not judged.
     pub breaking: Option<Amps>,
+    /// Cold resistance, as it stands in the path; `None`: not known apart from the joints.
+    pub resistance: Option<Ohms>,
 }
 
 /// A lead as far as heating goes.

@@ -3,14 +3,19 @@
 //! Keys carry their unit. Numbers are written in the shortest form that reads back as the same number.
 
 use serde_json::{Value, json};
+use strikeline_core::arrangements::{self, Arranged, Given};
 use strikeline_core::charge;
+use strikeline_core::hazard::{self, Circumstances, Hazards};
+use strikeline_core::margins::{self, Edge, Map, Margins};
 use strikeline_core::press::{self, PressOptions, PressStart};
 use strikeline_core::report::{
     ChargeEnd, ChargeReport, Event, EventKind, Ledger, Limit, Mode, NotFull, PressEnd, PressReport,
     PressSummary, Protector,
 };
 use strikeline_core::setup::Setup;
-use strikeline_core::verdict::{self, Reason, Verdict, Word};
+use strikeline_core::time_current::{self, Diagram};
+use strikeline_core::units::{Amps, Celsius};
+use strikeline_core::verdict::{self, Overall, Reason, Word};
 
 use crate::check::Checked;
 
@@ -25,22 +30,84 @@ pub struct Answers {
     pub press: PressReport,
     /// A press of the nominal parts from half charge, rested.
     pub half: PressReport,
-    /// The verdict from both charges.
-    pub verdict: Verdict,
+    /// The verdict from both charges and the hazards.
+    pub verdict: Overall,
+    /// One charge with nominal parts in the coldest surroundings of use, to its first press that is not full; `None`: no
+    /// colder than ambient.
+    pub cold: Option<ChargeReport>,
+    /// What was found that can harm.
+    pub hazards: Hazards,
+    /// What each of the four arrangements keeps and loses.
+    pub arrangements: [Arranged; 4],
 }
+
+/// What is computed beside the answers, and takes as long again.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Further {
+    /// Margins over the charge at ambient temperature, and in the coldest surroundings where those are colder.
+    pub margins: Vec<Margins>,
+    /// What a press does over charge and temperature.
+    pub map: Map,
+    /// The time–current diagram.
+    pub diagram: Diagram,
+}
+
+/// Rows of the margins.
+const MARGIN_ROWS: usize = 41;
+/// Columns of the map: states of charge.
+pub const MAP_SOCS: [f64; 20] = [
+    1.0, 0.95, 0.9, 0.85, 0.8, 0.75, 0.7, 0.65, 0.6, 0.55, 0.5, 0.45, 0.4, 0.35, 0.3, 0.25, 0.2, 0.15, 0.1,
+    0.05,
+];
+/// Rows of the map, warmest first.
+pub const MAP_TEMPERATURES: [f64; 9] = [50.0, 40.0, 30.0, 20.0, 10.0, 5.0, 0.0, -10.0, -20.0];
 
 /// Computes everything for a checked design.
 pub fn answer(checked: &Checked) -> Answers {
-    let charge = charge::run(&checked.nominal);
+    let nominal = &checked.nominal;
+    let charge = charge::run(nominal);
     let weak = charge::run(&checked.weak);
-    let usage = &checked.nominal.usage;
-    let start = PressStart::relaxed(&checked.nominal, 1.0, usage.ambient);
+    let usage = &nominal.usage;
+    let start = PressStart::relaxed(nominal, 1.0, usage.ambient);
     let options = PressOptions { samples: press::sample_times(usage.press), ..PressOptions::default() };
-    let press = press::run(&checked.nominal, &start, &options);
-    let half = PressStart::relaxed(&checked.nominal, 0.5, usage.ambient);
-    let half = press::run(&checked.nominal, &half, &options);
-    let verdict = verdict::judge(&charge, &weak);
-    Answers { charge, weak, press, half, verdict }
+    let press = press::run(nominal, &start, &options);
+    let half = PressStart::relaxed(nominal, 0.5, usage.ambient);
+    let half = press::run(nominal, &half, &options);
+    let coldest = checked.ratings.keeping.cold;
+    let cold = (coldest < usage.ambient).then(|| {
+        let mut there = nominal.clone();
+        there.usage.ambient = coldest;
+        charge::run_full_presses(&there)
+    });
+    let corners = corners(checked);
+    let ratings = &checked.ratings;
+    let hazards = hazard::hazards(&Circumstances {
+        corners,
+        weak: &checked.weak,
+        charge: &charge,
+        weak_charge: Some(&weak),
+        cold_charge: cold.as_ref(),
+        ratings,
+    });
+    let arrangements = arrangements::compare(&Given { corners, charge: &charge, ratings });
+    let verdict = verdict::weigh(verdict::judge(&charge, &weak), &hazards);
+    Answers { charge, weak, press, half, verdict, cold, hazards, arrangements }
+}
+
+fn corners(checked: &Checked) -> margins::Corners<'_> {
+    margins::Corners { low: &checked.low, typical: &checked.nominal, high: &checked.high }
+}
+
+/// Computes the margins, the map and the time–current diagram.
+pub fn further(checked: &Checked, answers: &Answers) -> Further {
+    let (nominal, ratings) = (&checked.nominal, &checked.ratings);
+    let corners = corners(checked);
+    let mut temperatures = vec![nominal.usage.ambient];
+    temperatures.extend(answers.cold.as_ref().map(|_| ratings.keeping.cold));
+    let margins = temperatures.into_iter().map(|t| margins::margins(corners, t, MARGIN_ROWS)).collect();
+    let map = margins::map(nominal, &MAP_SOCS, &MAP_TEMPERATURES.map(Celsius));
+    let diagram = time_current::diagram(corners, ratings, &answers.press);
+    Further { margins, map, diagram }
 }
 
 /// What a report holds beside verdict and summaries.
@@ -52,10 +119,12 @@ pub struct Extras {
     pub trace: bool,
     /// A line for every press of the charge.
     pub presses: bool,
+    /// The rows of the margins.
+    pub margins: bool,
 }
 
 /// The report of a design.
-pub fn json(name: &str, checked: &Checked, answers: &Answers, extras: Extras) -> Value {
+pub fn json(name: &str, checked: &Checked, answers: &Answers, further: &Further, extras: Extras) -> Value {
     let setup = &checked.nominal;
     let mut press = summary_json(setup, &answers.press.summary);
     if extras.events {
@@ -85,11 +154,13 @@ pub fn json(name: &str, checked: &Checked, answers: &Answers, extras: Extras) ->
         "press": press,
         "charge": charge,
         "charge_weak_parts": charge_json(&checked.weak, &answers.weak),
+        "margins": further.margins.iter().map(|m| margins_json(setup, m, extras.margins)).collect::<Vec<_>>(),
     })
 }
 
-fn verdict_json(setup: &Setup, verdict: &Verdict) -> Value {
-    let word = match verdict.word {
+fn verdict_json(setup: &Setup, overall: &Overall) -> Value {
+    let verdict = &overall.works;
+    let word = match overall.word {
         Word::Holds => "holds",
         Word::Borderline => "borderline",
         Word::Fails => "fails",
@@ -103,7 +174,55 @@ fn verdict_json(setup: &Setup, verdict: &Verdict) -> Value {
         Reason::NoFullPress(why) => format!("no_full_press:{}", not_full_name(setup, why)),
         Reason::StopsEarly(end) => format!("stops_early:{}", end_name(setup, end)),
     };
-    json!({ "word": word, "decided_with_parts": parts, "reason": reason })
+    json!({ "word": word, "decided_with_parts": parts, "reason": reason, "stop_hazards": overall.stops })
+}
+
+fn margins_json(setup: &Setup, margins: &Margins, with_rows: bool) -> Value {
+    let amps = |i: Option<Amps>| i.map(|i| i.0);
+    let rows: Vec<Value> = margins
+        .rows
+        .iter()
+        .map(|row| {
+            let trips: serde_json::Map<String, Value> = row
+                .trips
+                .iter()
+                .map(|t| {
+                    let band = json!({ "earliest_A": amps(t.low), "typical_A": amps(t.typical), "latest_A": amps(t.high) });
+                    (limit_name(setup, t.limit), band)
+                })
+                .collect();
+            json!({
+                "soc": row.soc,
+                "open_circuit_V": row.open_circuit.0,
+                "load_unlit_V": row.unlit.map(|s| s.load.0),
+                "load_lit_end_V": row.lit.map(|s| s.load.0),
+                "draw_A": row.lit.map(|s| s.current.0),
+                "trip": trips,
+                "strikes_up_to_ohm": row.strikes_up_to.0,
+                "holds_up_to_ohm": row.holds_up_to.0,
+            })
+        })
+        .collect();
+    let crossings: Vec<Value> = margins
+        .crossings
+        .iter()
+        .map(|c| {
+            let name = match c.edge {
+                Edge::Strike => "strike_lost".to_string(),
+                Edge::Hold => "hold_lost".to_string(),
+                Edge::TripEarliest(l) => format!("earliest_board_trips:{}", limit_name(setup, l)),
+                Edge::TripTypical(l) => format!("typical_board_trips:{}", limit_name(setup, l)),
+                Edge::TripLatest(l) => format!("latest_board_trips:{}", limit_name(setup, l)),
+                Edge::OverDischarge(p) => limit_name(setup, Limit::OverDischarge(p)),
+            };
+            json!({ "what": name, "soc": c.soc })
+        })
+        .collect();
+    let mut out = json!({ "temperature_C": margins.temperature.0, "crossings": crossings });
+    if with_rows {
+        out["rows"] = rows.into();
+    }
+    out
 }
 
 /// The name of a limit: a stage's own, or `over_discharge`; `second:` in front for the second protector.

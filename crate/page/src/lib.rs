@@ -6,6 +6,7 @@
 
 pub mod chart;
 pub mod form;
+pub mod further;
 pub mod number;
 pub mod results;
 pub mod sentences;

@@ -51,6 +51,11 @@ pub fn time(s: f64) -> String {
     }
 }
 
+/// A temperature, such as `20 °C`.
+pub fn degrees(t: f64) -> String {
+    format!("{} °C", fixed(t, 0))
+}
+
 /// A share as a whole percentage.
 pub fn percent(x: f64) -> String {
     if x > 0.0 && x < 0.005 { "under 1 %".into() } else { format!("{} %", fixed(100.0 * x, 0)) }

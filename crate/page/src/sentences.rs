@@ -81,7 +81,7 @@ pub fn verdict(nominal: &Setup, answers: &Answers) -> Said {
         charge.full_presses,
         percent(left_after_full(answers))
     );
-    let sentence = match (answers.verdict.word, answers.verdict.reason) {
+    let sentence = match (answers.verdict.works.word, answers.verdict.works.reason) {
         (Word::Holds, _) => format!("{until}; weak parts do too."),
         (Word::Borderline, Reason::NoFullPress(why)) => {
             format!(
@@ -104,11 +104,11 @@ pub fn verdict(nominal: &Setup, answers: &Answers) -> Said {
             )
         }
     };
-    let parts = match answers.verdict.parts {
+    let parts = match answers.verdict.works.parts {
         Parts::Nominal => "parts as entered",
         Parts::Weak => "every tolerance at its unfavourable end at once",
     };
-    let reason = match answers.verdict.reason {
+    let reason = match answers.verdict.works.reason {
         Reason::RunsDown(end) => format!("the charge runs down until {}", ended(nominal, end)),
         Reason::NoFullPress(why) => not_full(nominal, why),
         Reason::StopsEarly(end) => ended(nominal, end),

@@ -6,6 +6,7 @@ use std::rc::Rc;
 use strikeline_design::catalogue::{FIELDS, field};
 use strikeline_design::check::{self, Checked, Fault};
 use strikeline_design::design::Design;
+use strikeline_design::report::Answers;
 use strikeline_design::{file, link, report};
 use wasm_bindgen::JsCast;
 use wasm_bindgen::prelude::*;
@@ -16,7 +17,7 @@ use web_sys::{
 use crate::chart::Chart;
 use crate::form;
 use crate::number::fixed;
-use crate::{results, sentences};
+use crate::{further, results, sentences};
 
 /// Where the last design is kept in the browser.
 const KEPT: &str = "strikeline.design";
@@ -32,7 +33,13 @@ struct Page {
     before: Vec<Design>,
     after: Vec<Design>,
     charts: Vec<Chart>,
+    further_charts: Vec<Chart>,
     checked: Option<Checked>,
+    answers: Option<Answers>,
+    /// Draws what stands below the results, once the results are on the screen.
+    later: Option<js_sys::Function>,
+    /// Whether that is waited for.
+    due: bool,
     /// A link was opened: one's own kept design is left alone; what is changed stands in the address.
     visiting: bool,
     /// The field typed into last: one step back for all that is typed into it.
@@ -50,7 +57,9 @@ pub fn report_json(design: &str) -> String {
         Ok(design) => match check::check(&design) {
             Ok(checked) => {
                 let answers = report::answer(&checked);
-                report::json(&design.name, &checked, &answers, report::Extras::default()).to_string()
+                let further = report::further(&checked, &answers);
+                report::json(&design.name, &checked, &answers, &further, report::Extras::default())
+                    .to_string()
             }
             Err(faults) => {
                 faults.iter().map(|f| format!("{}: {}", f.key, f.message)).collect::<Vec<_>>().join("\n")
@@ -81,12 +90,25 @@ pub fn start() {
         before: Vec::new(),
         after: Vec::new(),
         charts: Vec::new(),
+        further_charts: Vec::new(),
         checked: None,
+        answers: None,
+        later: None,
+        due: false,
         visiting: false,
         typing: None,
         first: false,
     };
     let shared = Rc::new(RefCell::new(page));
+    let weak = Rc::downgrade(&shared);
+    let later = Closure::<dyn FnMut()>::new(move || {
+        if let Some(shared) = weak.upgrade()
+            && let Ok(mut page) = shared.try_borrow_mut()
+        {
+            page.draw_further();
+        }
+    });
+    shared.borrow_mut().later = later.into_js_value().dyn_into().ok();
     shared.borrow_mut().open_first();
     listen(&shared);
 }
@@ -249,6 +271,30 @@ impl Page {
             brief.set_class_name(said.tone);
         }
         self.charts = drawn.charts;
+        self.answers = Some(answers);
+        if !self.due
+            && let Some(later) = &self.later
+        {
+            self.due = self.window.set_timeout_with_callback_and_timeout_and_arguments_0(later, 0).is_ok();
+        }
+    }
+
+    /// What stands below the results.
+    fn draw_further(&mut self) {
+        self.due = false;
+        let (Some(checked), Some(answers)) = (&self.checked, &self.answers) else { return };
+        let Some(place) = self.element("further") else { return };
+        let clock = self.window.performance();
+        let begin = clock.as_ref().map_or(0.0, web_sys::Performance::now);
+        let further = report::further(checked, answers);
+        let width = f64::from(place.client_width().max(260));
+        let drawn = further::further(checked, answers, &further, width);
+        place.set_inner_html(&drawn.markup);
+        self.further_charts = drawn.charts;
+        if let Some(clock) = clock {
+            let took = clock.now() - begin;
+            place.set_attribute("data-ms", &fixed(took, 2)).ok();
+        }
     }
 
     /// Faults at their fields, and which fields matter.
@@ -359,8 +405,12 @@ impl Page {
     }
 
     /// The reading of a chart at a place: the cursor and the words under it.
+    fn chart(&self, id: &str) -> Option<&Chart> {
+        self.charts.iter().chain(&self.further_charts).find(|c| c.id == id)
+    }
+
     fn read(&self, svg: &Element, index: usize) {
-        let Some(chart) = self.charts.iter().find(|c| c.id == svg.id()) else { return };
+        let Some(chart) = self.chart(&svg.id()) else { return };
         if chart.x.is_empty() {
             return;
         }
@@ -482,13 +532,13 @@ fn listen(shared: &Shared) {
         }
     });
     on(&window, "resize", shared, |page, _| page.draw());
-    if let Some(main) = document.get_element_by_id("results") {
+    if let Some(main) = document.get_element_by_id("main") {
         on(&main, "pointermove", shared, |page, event| {
             let Some(svg) = target(event).and_then(|e| e.closest("svg.chart").ok().flatten()) else { return };
             let Some(pointer) = event.dyn_ref::<web_sys::MouseEvent>() else { return };
             let left = svg.get_bounding_client_rect().left();
             let width = svg.get_attribute("width").and_then(|w| w.parse().ok()).unwrap_or(300.0);
-            if let Some(chart) = page.charts.iter().find(|c| c.id == svg.id()) {
+            if let Some(chart) = page.chart(&svg.id()) {
                 let index = chart.nearest(f64::from(pointer.client_x()) - left, width);
                 page.read(&svg, index);
             }

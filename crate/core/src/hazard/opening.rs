@@ -193,7 +193,7 @@ impl Look<'_, '_> {
                 .filter(|(p, f)| *p < f.0)
                 .map(|(p, fuse)| (Level::Note, Kind::FuseBackupOnly { protector: Seconds(p), fuse })),
         );
-        match self.c.fuse_resistance {
+        match fuse.resistance {
             Some(r) => {
                 let power = Watts(self.draw.0 * self.draw.0 * r.0);
                 found.check((power > FUSE_HEAT_LOOK).then_some((Level::Look, Kind::FuseHeat { power })));
@@ -225,7 +225,7 @@ impl Look<'_, '_> {
 fn quick_fuse(draw: Amps, weakest: &ShortCircuit, full: &ShortCircuit) -> Option<(Amps, Amps)> {
     let clears = |rating: f64| {
         [weakest, full].into_iter().all(|short| {
-            let fuse = Fuse { rating: Amps(rating), kind: FuseKind::Quick, breaking: None };
+            let fuse = Fuse { rating: Amps(rating), kind: FuseKind::Quick, breaking: None, resistance: None };
             let latest = time_current::fuse_times(&fuse, short.current).1;
             latest.is_some_and(|t| lead_limit(short).is_none_or(|limit| t.0 < limit.0))
         })

@@ -6,7 +6,7 @@ use strikeline_core::cell::CellLimits;
 use strikeline_core::ratings::{
     Band, CellRatings, Charger, Contact, Fuse, FuseKind, Keeping, LeadRating, Output, OverCharge,
 };
-use strikeline_core::units::{Amps, Celsius, Farads, Seconds, Volts, Watts};
+use strikeline_core::units::{Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
 use strikeline_core::wiring::{Lead, per_km_20};
 
 use super::Reader;
@@ -114,7 +114,9 @@ impl Reader<'_> {
             }
             _ => self.ptc(rating),
         };
-        Some((Some(Fuse { rating: Amps(rating?), kind: kind?, breaking }), cold?))
+        let (rating, kind, cold) = (rating?, kind?, cold?);
+        let resistance = Some(Ohms(cold.typical));
+        Some((Some(Fuse { rating: Amps(rating), kind, breaking, resistance }), cold))
     }
 
     fn ptc(&mut self, rating: Option<f64>) -> Option<FuseKind> {
