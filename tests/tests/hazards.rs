@@ -13,15 +13,17 @@ use strikeline_core::hazard::{
 use strikeline_core::load::LitDraw;
 use strikeline_core::margins::{self, Corners};
 use strikeline_core::math::{Monotone, Polyline};
-use strikeline_core::press::PressStart;
+use strikeline_core::press::{self, PressOptions, PressStart};
 use strikeline_core::ratings::{
     Band, CellRatings, Charger, Contact, Fuse, FuseKind, Keeping, LeadRating, Output, OverCharge, Ratings,
 };
-use strikeline_core::report::{Limit, Protector};
+use strikeline_core::report::{Limit, PressEnd, Protector};
 use strikeline_core::setup::{Arrangement, Setup};
+use strikeline_core::time_current;
 use strikeline_core::units::{AmpHours, Amps, Celsius, Farads, Ohms, Seconds, Volts, Watts};
 use strikeline_core::verdict::{self, Word};
 use strikeline_core::wiring;
+use strikeline_tests::draw::Draw;
 use strikeline_tests::flat;
 
 /// A design with everything that the checks look at.
@@ -311,6 +313,29 @@ fn exact_board_never_trips_on_a_short() {
     edge("fuse instead", never, fused, [(0.25, LOOK), (1.45, STOP)]);
 }
 
+#[test]
+fn exact_short_ahead_of_the_board() {
+    let ahead = is!(Kind::ShortAheadOfBoard { .. });
+    let mut d = sound();
+    let found = d.look();
+    assert_eq!(level(&found, ahead), NOTE);
+    // 3.7 V over the cell's own 50 mΩ.
+    let current = number(&d, |k| match k {
+        Kind::ShortAheadOfBoard { current, .. } => Some(current.0),
+        _ => None,
+    });
+    assert!((current - 74.0).abs() < 1e-9, "{current}");
+    d.ratings.fuse = Some(quick(3.0));
+    assert_eq!(level(&d.look(), ahead), NONE);
+    d.ratings.fuse = None;
+    d.nominal.second_protector = Some(board());
+    assert_eq!(level(&d.look(), ahead), NONE);
+    d.nominal.second_protector = None;
+    d.nominal.board = None;
+    d.no_board();
+    assert_eq!(level(&d.look(), ahead), NONE, "there it is told as a short without protection");
+}
+
 /// The current at which a quick fuse between 2.1 times its rating (1800 s) and 2.75 times (3 s) takes as long as the
 /// lead stands: both are straight lines over the logarithm of the current.
 fn fuse_meets_lead(rating: f64) -> f64 {
@@ -487,7 +512,7 @@ fn exact_layers_of_the_four_arrangements() {
 
 #[test]
 fn law_trip_current_is_that_of_the_margins_where_the_path_can_give_it() {
-    let mut draw = strikeline_tests::draw::Draw::new(7);
+    let mut draw = Draw::new(7);
     let mut met = 0;
     for _ in 0..200 {
         let mut d = sound();
@@ -1373,4 +1398,125 @@ fn published_yes_or_no() {
     // π·4.2 V peak on the primary can be touched (13.19 V against 42.4 V, IEC 62368-1 and 60335-1).
     let primary = strikeline_core::driver::winding_peak(Volts(4.2));
     assert_eq!(hazard::stored_tier(primary), None);
+}
+
+/// Any design, sensible or not, with the ratings of the sound one: the findings are complete, sorted and the same again.
+#[test]
+fn law_any_design_has_its_hazards() {
+    let mut draw = Draw::new(23);
+    let (mut tripped, mut stopped) = (0, 0);
+    for k in 0..120 {
+        let mut d = sound();
+        d.nominal = draw.setup(4);
+        d.weak_ohm = draw.log(1e-3, 0.1);
+        d.ratings.keeping.held_hours = 1.0;
+        let found = d.look();
+        assert_eq!(found, d.look(), "design {k}");
+        assert!(found.findings.is_sorted_by_key(|f| f.level), "design {k}");
+        let bypassed = d.nominal.arrangement != Arrangement::ThroughBoard;
+        assert_eq!(level(&found, is!(Kind::ArrangementLoses { .. })).is_some(), bypassed, "design {k}");
+        let in_path = [d.nominal.board_in_path(), d.nominal.second_protector.as_ref()];
+        let low = in_path.iter().flatten().any(|b| b.over_discharge.is_some());
+        let bare = level(&found, is!(Kind::OverDischargeUnprotected { .. }));
+        assert_eq!(bare, if low { NONE } else { STOP }, "design {k}");
+        let staged = in_path.iter().flatten().any(|b| !b.stages.is_empty());
+        assert_eq!(level(&found, is!(Kind::ShortUnprotected { .. })).is_some(), !staged, "design {k}");
+        // A charge whose first press a stage opens has that trip among its findings, and for certain.
+        let first = &charge::run(&d.nominal).presses[0].summary;
+        if let PressEnd::Opened(opened @ Limit::Stage(..)) = first.end {
+            tripped += 1;
+            let told = found.findings.iter().any(
+                |f| matches!(f.kind, Kind::NuisanceTrip { limit, soc, certain: true, .. } if limit == opened && soc == 1.0),
+            );
+            assert!(told, "design {k}: {opened:?} is not told: {:?}", found.findings);
+        }
+        // A lower rating takes no finding away.
+        let mut tighter = d.clone();
+        tighter.ratings.cell.continuous = Some(Amps(0.5));
+        tighter.ratings.button.current = Some(Amps(0.5));
+        tighter.ratings.leads = vec![lead(0.05)];
+        let tight = tighter.look();
+        assert!(tight.findings.len() >= found.findings.len(), "design {k}");
+        assert!(tight.has_stop() || !found.has_stop(), "design {k}");
+        stopped += u32::from(found.has_stop());
+    }
+    println!("{tripped} trip at once, {stopped} have a stop");
+    assert!(tripped > 15 && stopped > 30, "{tripped} trip, {stopped} stop");
+}
+
+/// Where nothing warms or sags, the check on a short circuit and the simulated fault agree on what opens.
+#[test]
+fn law_a_short_opens_what_the_check_says() {
+    let mut draw = Draw::new(24);
+    let (mut opens, mut never) = (0, 0);
+    for k in 0..300 {
+        let mut setup = draw.setup(1);
+        setup.cell.branches.clear();
+        setup.cell.capacity = AmpHours(1e6);
+        setup.cell.r0_activation = 0.0;
+        setup.cell.entropy = Polyline::constant(0.0);
+        for board in [&mut setup.board, &mut setup.second_protector].into_iter().flatten() {
+            board.alpha_per_k = 0.0;
+        }
+        let start = PressStart::relaxed(&setup, 1.0, setup.usage.ambient);
+        let says = arrangements::opens_on_short(&setup, &start);
+        let fault = time_current::fault(&setup, 1.0, Ohms(0.0), Seconds(1.0));
+        let by = fault.opened.map(|limit| match limit {
+            Limit::Stage(p, index) => By::Stage(p, index),
+            Limit::OverDischarge(p) => By::OverDischarge(p),
+        });
+        assert_eq!(says.map(|(by, _)| by), by, "design {k}");
+        match says {
+            Some((_, delay)) => {
+                opens += 1;
+                assert!((fault.time.0 - delay.0).abs() < 1e-4 + 1e-3 * delay.0, "design {k}: {}", fault.time);
+            }
+            None => never += 1,
+        }
+    }
+    println!("{opens} open, {never} never");
+    assert!(opens > 30 && never > 30, "{opens} open, {never} never");
+}
+
+/// A held button empties the cell as a long press does, by equations of its own.
+#[test]
+fn law_a_held_button_is_a_long_press() {
+    let mut draw = Draw::new(25);
+    let mut met = 0;
+    for k in 0..200 {
+        let mut setup = draw.setup(1);
+        setup.arrangement = Arrangement::NoBoard;
+        setup.second_protector = None;
+        setup.load.surge = Amps(0.0);
+        setup.load.hold = Volts(8.0);
+        setup.load.strike = Volts(9.0);
+        setup.load.unlit = Ohms(draw.log(1.0, 30.0));
+        let start = PressStart::relaxed(&setup, 0.5, setup.usage.ambient);
+        let held = arrangements::held(&setup, &start);
+        let empty = held.to_empty.expect("nothing opens").0;
+        let levels = [(held.to_3_0, 3.0), (held.to_2_5, 2.5), (held.to_2_0, 2.0)];
+        let reached: Vec<(f64, f64)> = levels
+            .into_iter()
+            .filter_map(|(t, volts)| Some((t?.0, volts)))
+            .filter(|(t, _)| *t > 0.0 && *t < empty)
+            .collect();
+        setup.usage.press = Seconds(1.5 * empty);
+        let options = PressOptions {
+            samples: reached.iter().map(|(t, _)| Seconds(*t)).collect(),
+            ..PressOptions::default()
+        };
+        let report = press::run(&setup, &start, &options);
+        assert_eq!(report.summary.end, PressEnd::CellEmpty, "design {k}");
+        let ended = report.summary.end_time.0;
+        assert!((ended / empty - 1.0).abs() < 2e-3, "design {k}: empty after {empty} s, pressed {ended} s");
+        for (sample, (t, volts)) in report.trace.iter().zip(&reached) {
+            met += 1;
+            assert!(
+                (sample.cell.0 - volts).abs() < 5e-3,
+                "design {k}: {} at {t} s, not {volts} V",
+                sample.cell
+            );
+        }
+    }
+    assert!(met > 50, "{met} levels");
 }

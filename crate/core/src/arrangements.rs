@@ -106,7 +106,8 @@ pub struct LeadInShort {
     pub limit: Seconds,
 }
 
-/// The button held from the end of the charge on.
+/// The button held from the end of the charge on. Where neither `to_empty` nor `opened` is told, nothing is drawn, or the
+/// bound on steps was reached.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct Held {
     /// Draw when it begins.
@@ -543,10 +544,13 @@ const HELD_PIECE: f64 = 1e-3;
 /// The first step of a held button, and by how much the next may be longer.
 const HELD_FIRST_S: f64 = 0.05;
 const HELD_GROWS: f64 = 1.25;
+/// By how much the current may change in a step longer than the first.
+const HELD_CHANGE: f64 = 0.02;
 /// Bound on steps: a charge takes about 1000.
 const HELD_STEPS: u32 = 20_000;
 
-/// The button held from `start` on, the arc not striking again: the load draws what it draws unlit or stalled, until an
+/// The button held from `start` on, the arc not striking again: the load draws what it draws unlit or stalled, as it
+/// comes up from switching on (a load that cannot start stays stalled, which may be the heavier draw), until an
 /// over-discharge detection in the path opens or the cell is empty.
 ///
 /// - `setup`: wired as asked; its press length is not used.
@@ -555,7 +559,8 @@ const HELD_STEPS: u32 = 20_000;
 /// An arc that flickers empties the cell sooner.
 pub fn held(setup: &Setup, start: &PressStart) -> Held {
     let circuit = Circuit::new(setup);
-    let drain = Drain { setup, circuit };
+    let drain = Drain { setup, circuit, runs: core::cell::Cell::new(false) };
+    drain.settle(start);
     let mut state = start.clone();
     let mut t = 0.0;
     let mut h = HELD_FIRST_S;
@@ -586,6 +591,11 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
         // What is left runs out within this step; the model's curve ends there.
         let empties = h >= left || to.soc <= 0.0;
         let then = drain.now(&to);
+        // A jump or a quick change is followed by short steps.
+        if (then.current - now.current).abs() > HELD_CHANGE * now.current && h > HELD_FIRST_S {
+            h = (0.5 * h).max(HELD_FIRST_S);
+            continue;
+        }
         let pass = |reads: &dyn Fn(&PathNow) -> f64, level: f64| {
             let (mut a, mut b) = (0.0, h);
             for _ in 0..40 {
@@ -639,6 +649,7 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
             break;
         }
         state = to;
+        drain.settle(&state);
         h *= HELD_GROWS;
     }
     [result.to_3_0, result.to_2_5, result.to_2_0] = reached.map(|at| at.map(Seconds));
@@ -649,24 +660,37 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
 struct Drain<'a> {
     setup: &'a Setup,
     circuit: Circuit<'a>,
+    /// Whether the load ran at the beginning of the step.
+    runs: core::cell::Cell<bool>,
 }
 
 impl Drain<'_> {
-    /// Path and draw in a state.
+    /// Path and draw in a state; a load that runs goes on while it can, one that does not run starts only once its
+    /// stall draw lets the voltage up to the start voltage.
     fn now(&self, state: &PressStart) -> PathNow {
         let (e, r0) = inner(self.setup, state);
         let factors = factors(self.setup, state);
-        let load = &self.setup.load;
-        let runs = self.on_resistance(e, r0, factors, load.unlit.0);
-        if runs.1 >= load.start.0 {
+        let start = self.setup.load.start.0;
+        let runs = self.on_resistance(e, r0, factors, self.setup.load.unlit.0);
+        if self.runs.get() && runs.1 >= start {
             return runs.0;
         }
         let stalled = self.on_resistance(e, r0, factors, self.circuit.stall_ohm);
-        if stalled.1 <= load.start.0 {
+        if stalled.1 < start {
             return stalled.0;
         }
-        // Held at the start voltage.
-        self.circuit.path(e, r0, factors, load.start.0)
+        // Held at the start voltage, where it cannot go on running.
+        if runs.1 >= start { runs.0 } else { self.circuit.path(e, r0, factors, start) }
+    }
+
+    /// Keeps in mind whether the load runs in a state.
+    fn settle(&self, state: &PressStart) {
+        let (e, r0) = inner(self.setup, state);
+        let factors = factors(self.setup, state);
+        let start = self.setup.load.start.0;
+        let at = |ohm: f64| self.on_resistance(e, r0, factors, ohm).1;
+        let may = self.runs.get() || at(self.circuit.stall_ohm) >= start;
+        self.runs.set(may && at(self.setup.load.unlit.0) >= start);
     }
 
     /// Path and load voltage with a resistance as load: bracketed Newton on `I(V) = V/R`.
@@ -695,10 +719,45 @@ impl Drain<'_> {
         (now, v)
     }
 
-    /// The state a time `h` later: half a step to find the current, then the whole one.
+    /// The state a time `h` later, with the current that the middle of the step has.
+    ///
+    /// That current is solved for: a load held at its start voltage takes what the path gives, and a step that
+    /// guessed it would have to be short against the cell's branches. More current leaves a lower voltage and so
+    /// less current in the middle, hence one root.
     fn step(&self, state: &PressStart, h: f64) -> PressStart {
-        let half = self.move_on(state, &self.now(state), state, 0.5 * h);
-        self.move_on(state, &self.now(&half), &half, h)
+        let middle = |path: &PathNow| {
+            let half = self.move_on(state, path, state, 0.5 * h);
+            let there = self.now(&half);
+            (half, there)
+        };
+        let mut path = self.now(state);
+        let (mut half, mut there) = middle(&path);
+        let (mut low, mut high) = (0.0, f64::INFINITY);
+        // The current before and what was missing with it.
+        let mut before: Option<(f64, f64)> = None;
+        for _ in 0..60 {
+            let (i, miss) = (path.current, there.current - path.current);
+            if miss.abs() <= 1e-7 * i.abs() {
+                break;
+            }
+            if miss > 0.0 {
+                low = i;
+            } else {
+                high = i;
+            }
+            let secant = before.map_or(there.current, |(j, last)| i - miss * (i - j) / (miss - last));
+            let next = if secant > low && secant < high {
+                secant
+            } else if high.is_finite() {
+                0.5 * (low + high)
+            } else {
+                there.current
+            };
+            before = Some((i, miss));
+            path = PathNow { current: next, ..there };
+            (half, there) = middle(&path);
+        }
+        self.move_on(state, &PathNow { current: path.current, ..there }, &half, h)
     }
 
     /// From `from` on for `h` with the path and the parameters of `at`.

@@ -472,6 +472,14 @@ pub enum Kind {
         /// The cell's lowest voltage.
         limit: Volts,
     },
+    /// Nothing but the board opens, and it does not see a short circuit between the cell and itself. Note: the leads
+    /// ahead of it are the place for a fuse.
+    ShortAheadOfBoard {
+        /// Straight at the cell, full.
+        current: Amps,
+        /// Shortest time of a cell lead to its limit.
+        lead_limit: Option<Seconds>,
+    },
     /// Energy for the transport rules. Note; look above the small-cell or small-battery limit.
     Transport {
         /// Of one cell, in Wh.
@@ -568,6 +576,7 @@ pub fn hazards(c: &Circumstances<'_>) -> Hazards {
     let look = Look::new(c, &given);
     let mut found = Hazards::default();
     look.short(&mut found);
+    look.short_ahead(&mut found);
     look.what_is_lost(&mut found, &given);
     look.nuisance(&mut found);
     look.lets_through(&mut found);
@@ -593,7 +602,9 @@ pub fn source(kind: &Kind) -> &'static str {
     const PRACTICE: &str = "common practice, no source";
     const OURS: &str = "energy balance; the threshold is our choice";
     match kind {
-        Kind::ShortUnprotected { .. } => "IEC 60364-4-43, 434.5.2; IEC 60127-2",
+        Kind::ShortUnprotected { .. } | Kind::ShortAheadOfBoard { .. } => {
+            "IEC 60364-4-43, 434.5.2; IEC 60127-2"
+        }
         Kind::NeverTripsOnShort { .. } | Kind::NuisanceTrip { .. } => {
             "Ohm's law and the protector's data sheet"
         }
@@ -682,8 +693,9 @@ fn rank(kind: &Kind) -> u8 {
         Kind::ReversedCell { .. } => 35,
         Kind::HighVoltage { .. } => 36,
         Kind::DetectionBelowWindow { .. } => 37,
-        Kind::Transport { .. } => 38,
-        Kind::SwellingAndDisposal => 39,
-        Kind::LoadEstimated => 40,
+        Kind::ShortAheadOfBoard { .. } => 38,
+        Kind::Transport { .. } => 39,
+        Kind::SwellingAndDisposal => 40,
+        Kind::LoadEstimated => 41,
     }
 }

@@ -64,6 +64,22 @@ impl Look<'_, '_> {
         found.check(worst);
     }
 
+    /// A short circuit ahead of the board, where only a second protector or a fuse at the cell can open.
+    pub(super) fn short_ahead(&self, found: &mut Hazards) {
+        let setup = self.nominal;
+        let alone =
+            setup.board.is_some() && setup.second_protector.is_none() && self.ratings().fuse.is_none();
+        found.check(alone.then(|| {
+            let t = setup.usage.ambient;
+            let current = setup.cell.open_circuit(1.0, t) / setup.cell.r0_at(1.0, t);
+            let leads = self.ratings().leads.iter().filter(|lead| lead.cell_side);
+            let limit = leads
+                .map(|lead| arrangements::lead_in_short(lead, current).limit)
+                .min_by(|a, b| a.0.total_cmp(&b.0));
+            (Level::Note, Kind::ShortAheadOfBoard { current, lead_limit: limit })
+        }));
+    }
+
     pub(super) fn what_is_lost(&self, found: &mut Hazards, given: &Given<'_>) {
         let a = &self.arranged;
         let arrangement = a.arrangement;
