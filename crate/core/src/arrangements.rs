@@ -540,14 +540,16 @@ fn standby(given: &Given<'_>) -> Option<Seconds> {
 }
 
 /// The largest part of the charge that one step of a held button takes.
-const HELD_PIECE: f64 = 1e-3;
+const HELD_PIECE: f64 = 2e-3;
 /// The first step of a held button, and by how much the next may be longer.
 const HELD_FIRST_S: f64 = 0.05;
 const HELD_GROWS: f64 = 1.25;
+/// State of charge that counts as empty.
+const HELD_EMPTY: f64 = 1e-7;
 /// By how much the current may change in a step longer than the first.
 const HELD_CHANGE: f64 = 0.02;
-/// Bound on steps: a charge takes about 1000.
-const HELD_STEPS: u32 = 20_000;
+/// Bound on steps: a charge takes about 600.
+const HELD_STEPS: u32 = 3000;
 
 /// The button held from `start` on, the arc not striking again: the load draws what it draws unlit or stalled, as it
 /// comes up from switching on (a load that cannot start stays stalled, which may be the heavier draw), until an
@@ -560,7 +562,7 @@ const HELD_STEPS: u32 = 20_000;
 pub fn held(setup: &Setup, start: &PressStart) -> Held {
     let circuit = Circuit::new(setup);
     let drain = Drain { setup, circuit, runs: core::cell::Cell::new(false) };
-    drain.settle(start);
+
     let mut state = start.clone();
     let mut t = 0.0;
     let mut h = HELD_FIRST_S;
@@ -580,16 +582,17 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
         }
     }
     for _ in 0..HELD_STEPS {
-        let now = drain.now(&state);
+        let (now, runs) = drain.now_and_runs(&state);
+        drain.runs.set(runs);
         if now.current <= 0.0 || state.soc <= 0.0 {
             break;
         }
         let charge = setup.cell.charge_as();
         let left = state.soc * charge / now.current;
         h = h.min(HELD_PIECE * charge / now.current).min(left);
-        let to = drain.step(&state, h);
-        // What is left runs out within this step; the model's curve ends there.
-        let empties = h >= left || to.soc <= 0.0;
+        let to = drain.step(&state, &now, h);
+        // A step that was to take all of it may leave a little, which the next one takes.
+        let empties = to.soc <= HELD_EMPTY;
         let then = drain.now(&to);
         // A jump or a quick change is followed by short steps.
         if (then.current - now.current).abs() > HELD_CHANGE * now.current && h > HELD_FIRST_S {
@@ -600,7 +603,7 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
             let (mut a, mut b) = (0.0, h);
             for _ in 0..40 {
                 let m = 0.5 * (a + b);
-                if reads(&drain.now(&drain.step(&state, m))) < level {
+                if reads(&drain.now(&drain.step(&state, &now, m))) < level {
                     b = m;
                 } else {
                     a = m;
@@ -649,7 +652,6 @@ pub fn held(setup: &Setup, start: &PressStart) -> Held {
             break;
         }
         state = to;
-        drain.settle(&state);
         h *= HELD_GROWS;
     }
     [result.to_3_0, result.to_2_5, result.to_2_0] = reached.map(|at| at.map(Seconds));
@@ -668,29 +670,23 @@ impl Drain<'_> {
     /// Path and draw in a state; a load that runs goes on while it can, one that does not run starts only once its
     /// stall draw lets the voltage up to the start voltage.
     fn now(&self, state: &PressStart) -> PathNow {
+        self.now_and_runs(state).0
+    }
+
+    fn now_and_runs(&self, state: &PressStart) -> (PathNow, bool) {
         let (e, r0) = inner(self.setup, state);
         let factors = factors(self.setup, state);
         let start = self.setup.load.start.0;
         let runs = self.on_resistance(e, r0, factors, self.setup.load.unlit.0);
         if self.runs.get() && runs.1 >= start {
-            return runs.0;
+            return (runs.0, true);
         }
         let stalled = self.on_resistance(e, r0, factors, self.circuit.stall_ohm);
         if stalled.1 < start {
-            return stalled.0;
+            return (stalled.0, false);
         }
         // Held at the start voltage, where it cannot go on running.
-        if runs.1 >= start { runs.0 } else { self.circuit.path(e, r0, factors, start) }
-    }
-
-    /// Keeps in mind whether the load runs in a state.
-    fn settle(&self, state: &PressStart) {
-        let (e, r0) = inner(self.setup, state);
-        let factors = factors(self.setup, state);
-        let start = self.setup.load.start.0;
-        let at = |ohm: f64| self.on_resistance(e, r0, factors, ohm).1;
-        let may = self.runs.get() || at(self.circuit.stall_ohm) >= start;
-        self.runs.set(may && at(self.setup.load.unlit.0) >= start);
+        if runs.1 >= start { (runs.0, true) } else { (self.circuit.path(e, r0, factors, start), false) }
     }
 
     /// Path and load voltage with a resistance as load: bracketed Newton on `I(V) = V/R`.
@@ -712,7 +708,7 @@ impl Drain<'_> {
             let moved = (next - v).abs();
             v = next;
             now = self.circuit.path(e, r0, factors, v);
-            if moved <= 1e-13 {
+            if moved <= 1e-11 {
                 break;
             }
         }
@@ -724,13 +720,13 @@ impl Drain<'_> {
     /// That current is solved for: a load held at its start voltage takes what the path gives, and a step that
     /// guessed it would have to be short against the cell's branches. More current leaves a lower voltage and so
     /// less current in the middle, hence one root.
-    fn step(&self, state: &PressStart, h: f64) -> PressStart {
+    fn step(&self, state: &PressStart, now: &PathNow, h: f64) -> PressStart {
         let middle = |path: &PathNow| {
             let half = self.move_on(state, path, state, 0.5 * h);
             let there = self.now(&half);
             (half, there)
         };
-        let mut path = self.now(state);
+        let mut path = *now;
         let (mut half, mut there) = middle(&path);
         let (mut low, mut high) = (0.0, f64::INFINITY);
         // The current before and what was missing with it.

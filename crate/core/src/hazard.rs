@@ -513,6 +513,8 @@ pub enum NotJudged {
     CellCharge,
     /// No charge at the coldest temperature was given.
     ColdCharge,
+    /// A press, probed for a nuisance trip, reached its bound of work: an arc that flickers, mostly.
+    LongPress(Case),
     /// No lead has a rating.
     Leads,
     /// The fuse's breaking capacity.

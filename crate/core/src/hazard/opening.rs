@@ -4,7 +4,7 @@ use super::FUSE_HEAT_LOOK;
 use super::check::{Look, lead_limit};
 use super::{Case, Finding, Hazards, Kind, LETS_THROUGH_LOOK, Layers, Level, NotJudged};
 use crate::arrangements::{self, By, Given, ShortCircuit};
-use crate::press::{self, PressOptions, PressStart};
+use crate::press::{PressStart, Simulator};
 use crate::ratings::{Band, Fuse, FuseKind};
 use crate::report::{ChargeReport, Limit, PressEnd, Protector};
 use crate::setup::{Arrangement, Setup};
@@ -121,10 +121,13 @@ impl Look<'_, '_> {
             let early = [self.nominal, self.c.weak].map(|s| self.with_boards_of(corners.low, s, ambient));
             let late = self.with_boards_of(corners.high, self.nominal, ambient);
             let mut trips: Vec<(Limit, Kind)> = Vec::new();
+            let mut cut_short = false;
             for start in probes(charge, &early[0]) {
                 for setup in &early {
-                    let Some((limit, current)) = opened(setup, &start) else { continue };
-                    let certain = opened(&late, &start).is_some();
+                    let (end, current) = pressed(setup, &start);
+                    cut_short |= end == PressEnd::EventLimit;
+                    let PressEnd::Opened(limit @ Limit::Stage(..)) = end else { continue };
+                    let certain = matches!(pressed(&late, &start).0, PressEnd::Opened(Limit::Stage(..)));
                     let draw = current * setup.load.peak_factor;
                     let trip = self.trip_band(&early[0], &late, limit, &start);
                     let known = trips.iter_mut().find(|(l, _)| *l == limit);
@@ -138,6 +141,9 @@ impl Look<'_, '_> {
                         )),
                     }
                 }
+            }
+            if cut_short {
+                found.cannot(NotJudged::LongPress(case));
             }
             found.check(None);
             found.findings.extend(trips.into_iter().map(|(_, kind)| Finding { level: Level::Look, kind }));
@@ -283,15 +289,12 @@ fn probes(charge: &ChargeReport, setup: &Setup) -> Vec<PressStart> {
         .collect()
 }
 
-/// Bound on the events of such a press: an arc that flickers has thousands.
+/// Bounds on such a press: an arc that flickers has thousands of events; some 260 steps are usual.
 const PROBE_EVENTS: u32 = 500;
+const PROBE_STEPS: u64 = 3000;
 
-/// The current stage that opens in a press, and the current just before.
-fn opened(setup: &Setup, start: &PressStart) -> Option<(Limit, Amps)> {
-    let options = PressOptions { max_events: PROBE_EVENTS, ..PressOptions::default() };
-    let summary = press::run(setup, start, &options).summary;
-    match summary.end {
-        PressEnd::Opened(limit @ Limit::Stage(..)) => Some((limit, summary.current_end)),
-        _ => None,
-    }
+/// How such a press ends, and the current just before.
+fn pressed(setup: &Setup, start: &PressStart) -> (PressEnd, Amps) {
+    let summary = Simulator::new(setup, PROBE_EVENTS).press(&mut start.state(), None, PROBE_STEPS);
+    (summary.end, summary.current_end)
 }
