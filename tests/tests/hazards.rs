@@ -1405,7 +1405,7 @@ fn published_yes_or_no() {
 fn law_any_design_has_its_hazards() {
     let mut draw = Draw::new(23);
     let (mut tripped, mut stopped) = (0, 0);
-    for k in 0..120 {
+    for k in 0..60 {
         let mut d = sound();
         d.nominal = draw.setup(4);
         d.weak_ohm = draw.log(1e-3, 0.1);
@@ -1441,7 +1441,7 @@ fn law_any_design_has_its_hazards() {
         stopped += u32::from(found.has_stop());
     }
     println!("{tripped} trip at once, {stopped} have a stop");
-    assert!(tripped > 15 && stopped > 30, "{tripped} trip, {stopped} stop");
+    assert!(tripped > 8 && stopped > 15, "{tripped} trip, {stopped} stop");
 }
 
 /// Where nothing warms or sags, the check on a short circuit and the simulated fault agree on what opens.

@@ -161,8 +161,8 @@ pub enum Kind {
         lead_limit: Option<Seconds>,
         /// When the fuse clears at the weakest current, at the latest.
         fuse_clears: Option<Seconds>,
-        /// Rated currents of a quick fuse that carry the draw and clear in time, if any: 1.0 times the draw to a third
-        /// or less of the weakest current.
+        /// Smallest and largest rated current of a quick fuse that carries the draw and clears in time at both
+        /// currents, if any. It looks at the leads only; the cell is heated meanwhile.
         quick_fuse: Option<(Amps, Amps)>,
     },
     /// A protector is in the path, and a short circuit does not exceed any of its stages: cell too weak, leads too

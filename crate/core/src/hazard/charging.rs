@@ -79,7 +79,7 @@ impl Look<'_, '_> {
         }
     }
 
-    pub(super) fn charging_while_loaded(&self, found: &mut Hazards, charger: &Charger) {
+    fn charging_while_loaded(&self, found: &mut Hazards, charger: &Charger) {
         let load = charger.load_while_charging;
         found.check((load >= charger.termination).then_some((
             Level::Look,

@@ -150,7 +150,7 @@ impl Look<'_, '_> {
         }
     }
 
-    pub(super) fn trip_band(&self, early: &Setup, late: &Setup, limit: Limit, start: &PressStart) -> Band {
+    fn trip_band(&self, early: &Setup, late: &Setup, limit: Limit, start: &PressStart) -> Band {
         let Limit::Stage(protector, index) = limit else { return Band::exact(0.0) };
         let of = |setup: &Setup| {
             let board = match protector {
@@ -224,7 +224,7 @@ impl Look<'_, '_> {
         }
     }
 
-    pub(super) fn fuse_on_load(&self, found: &mut Hazards, fuse: &Fuse) {
+    fn fuse_on_load(&self, found: &mut Hazards, fuse: &Fuse) {
         let ambient = self.nominal.usage.ambient;
         let earliest = arrangements::fuse_time(fuse, self.draw, ambient).earliest;
         // What it carries for good: a fuse's rated current, a PTC's hold current at this temperature.

@@ -75,7 +75,7 @@ impl Look<'_, '_> {
     }
 
     /// The cell at the steady draw for as long as the button is held or the charge lasts.
-    pub(super) fn held_cell(&self) -> Celsius {
+    fn held_cell(&self) -> Celsius {
         let cell = &self.nominal.cell;
         let ambient = self.nominal.usage.ambient;
         let i = self.draw.0;
@@ -141,7 +141,7 @@ impl Look<'_, '_> {
         self.contact(found, ContactPart::Connector, &self.ratings().connector);
     }
 
-    pub(super) fn contact(&self, found: &mut Hazards, part: ContactPart, contact: &Contact) {
+    fn contact(&self, found: &mut Hazards, part: ContactPart, contact: &Contact) {
         let (draw, peak) = (self.draw, self.peak);
         match contact.current {
             Some(rating) => {
