@@ -164,9 +164,11 @@ impl<'a> Circuit<'a> {
     /// function of the temperature alone, whatever was asked before.
     fn arrhenius(&self, t: f64, inverse_kelvin: f64) -> (f64, f64) {
         let cell = self.cell;
-        let degree = t.round();
         let mut anchor = self.anchor.get();
-        if anchor.degree != degree {
+        // Inside half a degree the anchor is the nearest whole degree; on the half it is looked up.
+        let near = (t - anchor.degree).abs() < 0.5;
+        if !near {
+            let degree = t.round();
             let inverse = 1.0 / Celsius(degree).kelvin();
             let x = (inverse - 1.0 / REFERENCE_K) / GAS_CONSTANT;
             anchor = Anchor {

@@ -285,6 +285,8 @@ struct Moment<'r, 'o> {
     t: f64,
     y: Y,
     point: Point,
+    /// Of the point only path and load are those of now: rates and curves are of a moment ago.
+    stale: bool,
     next_sample: usize,
 }
 
@@ -381,6 +383,7 @@ impl<'a> Simulator<'a> {
             t: 0.0,
             y: *y,
             point: self.point(y, 0.0),
+            stale: false,
             next_sample: 0,
         };
         self.log(&mut now, EventKind::Closed);
@@ -453,6 +456,10 @@ impl<'a> Simulator<'a> {
                     fresh = !self.slaved;
                     continue;
                 }
+            }
+            if now.stale {
+                now.point = self.point(&now.y, now.t);
+                now.stale = false;
             }
             let (taken, crossing) = self.advance(now, stop, &mut h);
             if !taken {

@@ -148,7 +148,24 @@ impl Polyline {
     }
 
     /// As [`Polyline::at_with_slope`], for places that move little from call to call.
+    #[inline]
     pub(crate) fn at_near(&self, x: f64, last: &core::cell::Cell<usize>) -> (f64, f64) {
+        if self.slope.is_empty() {
+            return (self.y[0], 0.0);
+        }
+        let k = last.get();
+        if let (Some(&from), Some(&to), Some(&slope), Some(&y)) =
+            (self.x.get(k), self.x.get(k + 1), self.slope.get(k), self.y.get(k))
+            && from <= x
+            && x < to
+        {
+            return (y + slope * (x - from), slope);
+        }
+        self.at_far(x, last)
+    }
+
+    /// The same where the last piece is not the one.
+    fn at_far(&self, x: f64, last: &core::cell::Cell<usize>) -> (f64, f64) {
         let end = self.x.len() - 1;
         if x.is_nan() {
             return (x, 0.0);
@@ -159,7 +176,8 @@ impl Polyline {
         if x >= self.x[end] {
             return (self.y[end], 0.0);
         }
-        let k = piece_near(&self.x, x, last);
+        let k = piece(&self.x, x);
+        last.set(k);
         (self.y[k] + self.slope[k] * (x - self.x[k]), self.slope[k])
     }
 }

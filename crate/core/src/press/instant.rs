@@ -185,6 +185,7 @@ impl Simulator<'_> {
             self.strike_since = None;
         }
         now.point = self.point(&now.y, now.t);
+        now.stale = false;
         self.guess = now.point.at.v;
         now.tally.peak = now.tally.peak.max(now.point.at.path.current);
         self.log(now, kind);

@@ -28,8 +28,8 @@ const NODES: [(f64, f64); 5] = [
 ];
 /// How near to an operating point a stretch goes, in V; the capacitor is slaved from there.
 const NEAR: f64 = 1e-6;
-/// From how many time constants on a stretch towards an operating point is taken as straight over V.
-const TAIL: f64 = 5.0;
+/// Energy, in J, by which the capacitor's may be wrong where the end of a stretch is taken as straight over V.
+const TAIL_WITHIN: f64 = 1e-9;
 /// How long Newton's last move to an operating point may be, in V.
 const FOUND: f64 = 1e-8;
 /// How far the slow states may move the source within a stretch, in V.
@@ -97,12 +97,17 @@ impl Simulator<'_> {
             Goal::Settled => {
                 self.slaved = true;
                 now.point = self.point(&now.y, now.t);
+                now.stale = false;
                 self.settle_charge(now, to);
                 // A load that the slow states move too fast for that is followed by steps.
                 self.change_regime(now);
             }
             Goal::Threshold(crossing) => {
-                now.point = self.point(&now.y, now.t);
+                // The slow states have hardly moved: what follows at once needs path and load only. The rates
+                // are filled in before a step needs them.
+                now.point.at = last;
+                now.point.polar = y[BRANCH] + y[BRANCH + 1] + y[BRANCH + 2];
+                now.stale = true;
                 self.cross(crossing, now);
             }
         }
@@ -325,17 +330,20 @@ impl Simulator<'_> {
                 let all = crate::math::ln(whole / (v_e - to));
                 let mut a = 0.0;
                 // The integrand goes to a constant as e^(−s): pieces grow with s.
-                for b in [1.5, TAIL] {
-                    let b = all.min(b);
+                // What is not straight in the tail is of the order of C·(V_e − V)² there.
+                let tail = 0.5 * crate::math::ln(capacitance * whole * whole / TAIL_WITHIN);
+                let tail = tail.max(1.5);
+                for b in [1.5, 5.0, 9.0] {
+                    let b = all.min(b).min(tail);
+                    if b <= a {
+                        break;
+                    }
                     let (middle, half) = (0.5 * (a + b), 0.5 * (b - a));
                     for (x, weight) in NODES {
                         let away = whole * crate::math::exp(-(middle + half * x));
                         add(v_e - away, away, weight * half);
                     }
                     a = b;
-                    if a >= all {
-                        break;
-                    }
                 }
                 if all > a {
                     // So near the operating point everything is straight over V, and the way is an exponential:
