@@ -258,7 +258,7 @@ pub const FIELDS: &[Field] = fields![
     "board.retry" Board folded When::Is("board.release", &["retry"]), "Tries again every", needs(S, 1e-3, 1e4), "1 s", "Time between two tries.";
     "board.sense" Board folded ALWAYS, "Senses", SENSE, "pair", "A low-value resistor beside the protector is a shunt.";
     "board.shunt" Board folded ALWAYS, "Shunt", needs(MOHM, 0.0, 1.0), "0 mΩ", "0 where there is none.";
-    "board.on" Board folded ALWAYS, "Pair over gate voltage", table(V, MOHM), "", "Gate voltage and mΩ of one pair, a pair a line, not rising. Left empty: a usual shape through the figure at 3.8 V.";
+    "board.on" Board folded ALWAYS, "Pair over gate voltage", table(V, MOHM), "", "Gate voltage and mΩ of one pair, a pair a line, not rising. Left empty: a usual shape through the figure at 3.8 V; its tolerance counts here too.";
     "board.alpha" Board folded ALWAYS, "Pair, change with temperature", needs(PERK, 0.0, 0.05), "0.4 %/K", "Common engineering law: 0.4 % per K.";
     "board.thermal" Board folded ALWAYS, "Pair, thermal resistance", needs(KW, 0.0, 1000.0), "60 K/W", "Of the whole group of pairs to the air.";
     "board.thermal_time" Board folded ALWAYS, "Pair, thermal time constant", needs(S, 1e-3, 1e4), "8 s", "Package and a little copper: seconds.";

@@ -481,8 +481,16 @@ impl Reader<'_> {
             over_discharge: od[0],
             release,
         };
-        let corner = |pair: f64, k: usize| Board {
-            on_resistance: on.clone().unwrap_or_else(|| usual_on_resistance(pair)),
+        // A table is as uncertain as the figure at 3.8 V, in parts of it.
+        let scaled = |on: &Polyline, by: f64| {
+            let y = on.y().iter().map(|r| r * by).collect();
+            Polyline::new(on.x().to_vec(), y).unwrap_or_else(|_| on.clone())
+        };
+        let corner = |r: f64, k: usize| Board {
+            on_resistance: match &on {
+                Some(on) => scaled(on, r / pair.typical),
+                None => usual_on_resistance(r),
+            },
             stages: stages.iter().map(|s| s[k].clone()).collect(),
             over_discharge: od[k],
             ..nominal.clone()
@@ -761,6 +769,19 @@ mod tests {
         assert_eq!((&checked.low.cell, &checked.low.path), (&checked.nominal.cell, &checked.nominal.path));
         let pair = |setup: &Setup| setup.second_protector.as_ref().expect("fitted").on_resistance.at(3.8);
         assert!(pair(&checked.low) > pair(&checked.nominal) && pair(&checked.nominal) > pair(&checked.high));
+    }
+
+    #[test]
+    fn exact_a_table_of_the_pair_is_as_uncertain_as_its_figure() {
+        let mut design = Design::demo();
+        design.set("board.pair", "50 ± 10 mΩ");
+        design.set("board.on", "2.5 60\n4.5 40");
+        let checked = check(&design).expect("sound");
+        let at = |setup: &Setup| setup.board.as_ref().expect("fitted").on_resistance.at(4.5);
+        for (setup, ohm) in [(&checked.low, 0.048), (&checked.nominal, 0.040), (&checked.high, 0.032)] {
+            assert!((at(setup) - ohm).abs() < 1e-12, "{} Ω", at(setup));
+        }
+        assert!((at(&checked.weak) - 0.048).abs() < 1e-12, "{} Ω", at(&checked.weak));
     }
 
     #[test]
