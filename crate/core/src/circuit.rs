@@ -59,6 +59,20 @@ impl Switch {
         (1.0 + self.alpha * (t - 25.0)) * self.share
     }
 
+    /// How far a constant current warms the pair above the ambient temperature, at which it begins, in K; ∞ where it
+    /// runs away.
+    ///
+    /// - `ohms`: resistance of the pair at the temperature `at`.
+    pub(crate) fn rise(&self, ambient: f64, at: f64, ohms: f64, current: f64, length_s: f64) -> f64 {
+        // τ·dT/dt = I²·R·Rθ − (T − T_a) with R = R_25·(1 + α·(T − 25)) is linear in T.
+        let cold = ohms / (1.0 + self.alpha * (at - 25.0));
+        let heat = current * current * cold * self.thermal_k_per_w;
+        let times = length_s / self.thermal_time_s;
+        let x = (1.0 - heat * self.alpha) * times;
+        let share = if x.abs() < 1e-6 { 1.0 - 0.5 * x } else { (1.0 - exp(-x)) / x };
+        heat * (1.0 + self.alpha * (ambient - 25.0)) * times * share
+    }
+
     /// Change of `factor` per K.
     fn factor_slope(&self) -> f64 {
         self.alpha * self.share

@@ -7,7 +7,7 @@
 
 use crate::board::{Board, SensePoint, Threshold};
 use crate::cell::MAX_BRANCHES;
-use crate::circuit::{CellNow, Circuit, PathNow};
+use crate::circuit::{CellNow, Circuit, PathNow, Switch};
 use crate::math::exp;
 use crate::press::{self, PressOptions, PressStart};
 use crate::report::{Limit, Mode, NotFull, Protector};
@@ -303,9 +303,13 @@ impl<'a> View<'a> {
 
     fn steady(&self, cell: &CellNow, at: &Place, mode: Mode) -> Option<Steady> {
         let (path, v) = self.meet(cell, at, mode)?;
+        Some(Self::steady_at(cell, at, path, v))
+    }
+
+    fn steady_at(cell: &CellNow, at: &Place, path: PathNow, v: f64) -> Steady {
         let e = cell.ocv - at.polarisation.0;
         let current = path.current.max(f64::MIN_POSITIVE);
-        Some(Steady {
+        Steady {
             current: Amps(path.current),
             load: Volts(v),
             board: Volts(path.board),
@@ -313,7 +317,7 @@ impl<'a> View<'a> {
             pair: Ohms(path.pair),
             switch_temperature: at.switch,
             total: Ohms((e - v) / current),
-        })
+        }
     }
 
     /// The end of a press that draws throughout what it draws there.
@@ -324,29 +328,33 @@ impl<'a> View<'a> {
         let settled: [f64; MAX_BRANCHES] = core::array::from_fn(|k| {
             if c.branch_rate[k] > 0.0 { 1.0 - exp(-length * c.branch_rate[k]) } else { 0.0 }
         });
-        let warmed = |s: &Option<crate::circuit::Switch>| {
-            s.as_ref().map_or(0.0, |s| s.thermal_k_per_w * (1.0 - exp(-length / s.thermal_time_s)))
+        let ambient = self.t;
+        let warmed = |switch: &Option<Switch>, at: Celsius, ohms: f64, i: f64| {
+            let rise = switch.as_ref().map_or(0.0, |s| s.rise(ambient, at.0, ohms, i, length));
+            // A thermal runaway of the switch is cut off where its law ends.
+            Celsius((ambient + rise).min(400.0))
         };
-        let (board_warms, second_warms) = (warmed(&c.board), warmed(&c.second));
         let mut at = Place::rested(soc, t);
         let mut steady = None;
         let mut before = f64::NAN;
         for _ in 0..30 {
             let cell = c.cell_now(at.soc, self.t);
-            let Some((path, _)) = self.meet(&cell, &at, Mode::Lit) else { return (at, None) };
-            steady = self.steady(&cell, &at, Mode::Lit);
+            let Some((path, v)) = self.meet(&cell, &at, Mode::Lit) else { return (at, None) };
+            steady = Some(Self::steady_at(&cell, &at, path, v));
             let i = path.current;
-            if (i - before).abs() <= 1e-9 * i.abs() {
-                break;
-            }
-            before = i;
+            let was = at;
             at.soc = (soc - i * length / c.charge_as).max(0.0);
             let factor = c.cell_now(at.soc, self.t).branch_factor;
             at.polarisation =
                 Volts((0..MAX_BRANCHES).map(|k| i * c.branch_ohm[k] * factor * settled[k]).sum());
-            // A thermal runaway of the switch is cut off where its law ends.
-            at.switch = Celsius((self.t + i * i * path.pair * board_warms).min(400.0));
-            at.second = Celsius((self.t + i * i * path.second * second_warms).min(400.0));
+            at.switch = warmed(&c.board, was.switch, path.pair, i);
+            at.second = warmed(&c.second, was.second, path.second, i);
+            // The current alone does not tell: a constant one repeats at once, while the switch is still cold.
+            let moved = (at.switch.0 - was.switch.0).abs() + (at.second.0 - was.second.0).abs();
+            if (i - before).abs() <= 1e-9 * i.abs() && moved <= 1e-6 {
+                break;
+            }
+            before = i;
         }
         (at, steady)
     }
