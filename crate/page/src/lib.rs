@@ -4,9 +4,11 @@
 //! SVG written here and not by a plotting library: they take the page's colours and type, have direct labels
 //! and a text for screen readers, and cost a few kilobytes of download.
 
+pub mod arrangements;
 pub mod chart;
 pub mod form;
 pub mod further;
+pub mod hazards;
 pub mod number;
 pub mod results;
 pub mod sentences;

@@ -7,7 +7,9 @@ use strikeline_core::verdict::{self, Part};
 use strikeline_design::check::Checked;
 use strikeline_design::report::Answers;
 
+use crate::arrangements;
 use crate::chart::{self, Chart, Level, Line, Stair};
+use crate::hazards;
 use crate::number::{amps, escaped, fixed, percent, time, volts};
 use crate::sentences;
 
@@ -23,9 +25,6 @@ pub struct Results {
 pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
     let setup = &checked.nominal;
     let said = sentences::verdict(setup, answers);
-    let warning = sentences::arrangement_warning(setup)
-        .map(|text| format!("<p class=\"warning\"><b>▲ Stop.</b> {}</p>", escaped(text)))
-        .unwrap_or_default();
     let inner = (width - 34.0).max(240.0);
     // As the style has it: two figures side by side from twice 430 px and a gap.
     let pair = if width >= 880.0 { (width - 20.0) / 2.0 - 34.0 } else { inner };
@@ -50,11 +49,11 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
     };
     let press_note = "first press of a full cell; time from switch closing, each decade as wide as the last";
     let markup = format!(
-        "<div class=\"verdict {tone}\"><h1 class=\"word\">{word}</h1><p class=\"sentence\">{sentence}</p><p class=\"decided\">{decided}</p>{warning}</div>\
+        "<div class=\"verdict {tone}\"><h1 class=\"word\">{word}</h1><p class=\"sentence\">{sentence}</p><p class=\"decided\">{decided}</p></div>\
          {facts}\
          <figure><figcaption>Where the voltage goes<span>{stairs_note}</span></figcaption>{stairs}</figure>\
          <h2 id=\"one-press\">One press</h2>{f0}<div class=\"two\">{f1}{sense}</div>{events}\
-         <h2 id=\"one-charge\">One charge</h2><p>{charge_sentence}</p><div class=\"two\">{f2}{f3}</div>{energy}",
+         <h2 id=\"one-charge\">One charge</h2><p>{charge_sentence}</p><div class=\"two\">{f2}{f3}</div>{energy}{hazards}{wiring}",
         tone = said.tone,
         word = said.word,
         sentence = escaped(&said.sentence),
@@ -79,6 +78,8 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
             pair
         ),
         energy = energy(answers),
+        hazards = hazards::section(setup, &answers.hazards),
+        wiring = arrangements::section(setup, &answers.arrangements),
     );
     Results { markup, charts }
 }

@@ -1,10 +1,12 @@
 //! What the page says of the numbers, sentence by sentence.
 
+use strikeline_core::hazard::Level;
 use strikeline_core::report::{ChargeEnd, Event, EventKind, Limit, NotFull, Protector};
-use strikeline_core::setup::{Arrangement, Setup};
+use strikeline_core::setup::Setup;
 use strikeline_core::verdict::{Parts, Reason, Word};
 use strikeline_design::report::Answers;
 
+use crate::hazards;
 use crate::number::{amps, percent, time, volts};
 
 /// A verdict in words.
@@ -113,6 +115,20 @@ pub fn verdict(nominal: &Setup, answers: &Answers) -> Said {
         Reason::NoFullPress(why) => not_full(nominal, why),
         Reason::StopsEarly(end) => ended(nominal, end),
     };
+    if let Some(grave) = answers.hazards.findings.iter().find(|f| f.level == Level::Stop) {
+        let title = lower(&hazards::finding(nominal, &grave.kind).title);
+        let more = match answers.verdict.stops - 1 {
+            0 => String::new(),
+            1 => ", and one more hazard at stop level".into(),
+            n => format!(", and {n} more hazards at stop level"),
+        };
+        return Said {
+            word,
+            tone,
+            sentence: format!("Do not build it so: {title}."),
+            decided: format!("Decided by that{more}. What the current alone would do: {}", lower(&sentence)),
+        };
+    }
     Said { word, tone, sentence, decided: format!("Decided by: {reason} ({parts}).") }
 }
 
@@ -129,25 +145,6 @@ pub fn left_after_full(answers: &Answers) -> f64 {
         .rev()
         .find(|p| p.summary.not_full.is_none())
         .map_or(1.0, |p| p.summary.soc_end)
-}
-
-/// What the arrangement gives up; `None` for the board used as it is meant.
-pub fn arrangement_warning(setup: &Setup) -> Option<&'static str> {
-    match setup.arrangement {
-        Arrangement::ThroughBoard => None,
-        Arrangement::LoadAtCell => Some(
-            "The load is taken at the cell: nothing on the board opens on a short, on too much current or on an empty \
-             cell. A short then heats leads and cell until something burns. Wire the load through a board that can carry it.",
-        ),
-        Arrangement::SwitchBridged => Some(
-            "The board's switch is bridged: nothing opens on a short, on too much current, on an empty cell or on an \
-             over-charged one. Take the bridge away and use a board that can carry the load.",
-        ),
-        Arrangement::NoBoard => Some(
-            "There is no board: nothing opens on a short, on too much current, on an empty cell or on an over-charged \
-             one. Fit a board that can carry the load.",
-        ),
-    }
 }
 
 /// The verdict in a line, for a narrow page.
@@ -195,6 +192,12 @@ pub fn event(setup: &Setup, e: &Event) -> String {
     format!("{}: {what}", time(e.time.0))
 }
 
+/// With a small first letter.
+fn lower(text: &str) -> String {
+    let mut letters = text.chars();
+    letters.next().map_or_else(String::new, |first| first.to_lowercase().chain(letters).collect())
+}
+
 /// With a capital first letter.
 pub fn capital(text: &str) -> String {
     let mut chars = text.chars();
@@ -231,8 +234,9 @@ mod tests {
         for way in ["load_at_cell", "switch_bridged", "no_board"] {
             design.set("board.arrangement", way);
             let checked = check(&design).expect("sound");
-            let warning = arrangement_warning(&checked.nominal).expect("a warning");
-            assert!(warning.contains("nothing") && warning.contains("a board that can carry"), "{way}");
+            let said = verdict(&checked.nominal, &answer(&checked));
+            assert_eq!(said.word, "Fails", "{way}");
+            assert!(said.sentence.starts_with("Do not build it so: "), "{}", said.sentence);
         }
     }
 }

@@ -151,7 +151,8 @@ impl Polyline {
     #[inline]
     pub(crate) fn at_near(&self, x: f64, last: &core::cell::Cell<usize>) -> (f64, f64) {
         if self.slope.is_empty() {
-            return (self.y[0], 0.0);
+            // A constant; what is not a number stays so.
+            return (if x.is_nan() { x } else { self.y[0] }, 0.0);
         }
         let k = last.get();
         if let (Some(&from), Some(&to), Some(&slope), Some(&y)) =

@@ -29,7 +29,7 @@ const NODES: [(f64, f64); 5] = [
 /// How near to an operating point a stretch goes, in V; the capacitor is slaved from there.
 const NEAR: f64 = 1e-6;
 /// Energy, in J, by which the capacitor's may be wrong where the end of a stretch is taken as straight over V.
-const TAIL_WITHIN: f64 = 1e-9;
+const TAIL_WITHIN: f64 = 1e-10;
 /// How long Newton's last move to an operating point may be, in V.
 const FOUND: f64 = 1e-8;
 /// How far the slow states may move the source within a stretch, in V.
@@ -332,8 +332,8 @@ impl Simulator<'_> {
                 // The integrand goes to a constant as e^(−s): pieces grow with s.
                 // What is not straight in the tail is of the order of C·(V_e − V)² there.
                 let tail = 0.5 * crate::math::ln(capacitance * whole * whole / TAIL_WITHIN);
-                let tail = tail.max(1.5);
-                for b in [1.5, 5.0, 9.0] {
+                let tail = tail.clamp(1.5, 10.0);
+                for b in [1.5, if tail <= 6.5 { tail } else { 5.0 }, tail] {
                     let b = all.min(b).min(tail);
                     if b <= a {
                         break;
