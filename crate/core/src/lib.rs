@@ -7,6 +7,7 @@ pub mod arrangements;
 pub mod board;
 pub mod cell;
 pub mod charge;
+pub mod charger;
 mod circuit;
 pub mod driver;
 pub mod hazard;
