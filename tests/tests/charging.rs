@@ -1,6 +1,6 @@
 //! A charger filling drawn cells: laws, and draws far from sensible.
 
-use strikeline_core::charger::{self, ChargeRun, ChargeStart, End, MAX_STEPS, Phase};
+use strikeline_core::charger::{self, ChargePoint, ChargeRun, ChargeStart, End, MAX_STEPS, Phase};
 use strikeline_core::ratings::{Band, Charger};
 use strikeline_core::replay::{self, Recorded, ReplayStart};
 use strikeline_core::setup::Setup;
@@ -123,9 +123,10 @@ fn law_a_replay_of_the_constant_current_ends_at_the_same_voltage() {
         let run = charger::simulate(&setup, &charger, &from);
         let [trickle, constant, _] = run.phases;
         let end = run.trace.iter().rfind(|p| p.phase == Phase::ConstantCurrent);
-        let Some(end) = end.filter(|e| trickle.0 == 0.0 && constant.0 > 60.0 && e.soc < 1.0) else {
-            continue;
-        };
+        // In one go: a cell that warms can take the constant current a second time.
+        let plain =
+            |e: &&ChargePoint| trickle.0 == 0.0 && e.time == constant && constant.0 > 60.0 && e.soc < 1.0;
+        let Some(end) = end.filter(plain) else { continue };
         seen += 1;
         let begin = ReplayStart { soc: from.soc, temperature: from.ambient, ambient: from.ambient };
         let current = Amps(-charger.current.typical);
