@@ -5,6 +5,7 @@
 use serde_json::{Value, json};
 use strikeline_core::arrangements::{self, Arranged, Given};
 use strikeline_core::charge;
+use strikeline_core::charger::{self, ChargeRun, ChargeStart, LoadLeftOn};
 use strikeline_core::hazard::{self, Circumstances, Hazards};
 use strikeline_core::margins::{self, Edge, Map, Margins};
 use strikeline_core::press::{self, PressOptions, PressStart};
@@ -50,6 +51,19 @@ pub struct Further {
     pub map: Map,
     /// The time–current diagram.
     pub diagram: Diagram,
+    /// The next charge by the charger; `None`: there is no charger.
+    pub charging: Option<Charging>,
+}
+
+/// How the charger fills the nominal cell from where its charge ended.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Charging {
+    /// State of charge it begins at: after the last full press, or where the charge ended without one.
+    pub soc: f64,
+    /// In the coldest and the hottest surroundings in which it is charged.
+    pub runs: [ChargeRun; 2],
+    /// What the load left on does, from the charger's figures.
+    pub left_on: LoadLeftOn,
 }
 
 /// Rows of the margins.
@@ -107,7 +121,16 @@ pub fn further(checked: &Checked, answers: &Answers) -> Further {
     let margins = temperatures.into_iter().map(|t| margins::margins(corners, t, MARGIN_ROWS)).collect();
     let map = margins::map(nominal, &MAP_SOCS, &MAP_TEMPERATURES.map(Celsius));
     let diagram = time_current::diagram(corners, ratings, &answers.press);
-    Further { margins, map, diagram }
+    let charging = ratings.charger.map(|fitted| {
+        let charge = &answers.charge;
+        let full = charge.presses.iter().rfind(|p| p.summary.not_full.is_none());
+        let soc = full.map_or(charge.soc_left, |p| p.summary.soc_end);
+        let load = fitted.load_while_charging;
+        let run = |ambient| charger::simulate(nominal, &fitted, &ChargeStart { soc, ambient, load });
+        let runs = [run(fitted.ambient.0), run(fitted.ambient.1)];
+        Charging { soc, runs, left_on: charger::load_left_on(&fitted, load) }
+    });
+    Further { margins, map, diagram, charging }
 }
 
 /// What a report holds beside verdict and summaries.
@@ -155,7 +178,52 @@ pub fn json(name: &str, checked: &Checked, answers: &Answers, further: &Further,
         "charge": charge,
         "charge_weak_parts": charge_json(&checked.weak, &answers.weak),
         "margins": further.margins.iter().map(|m| margins_json(setup, m, extras.margins)).collect::<Vec<_>>(),
+        "charging": further.charging.as_ref().map(|c| charging_json(checked, c)),
     })
+}
+
+fn charging_json(checked: &Checked, charging: &Charging) -> Value {
+    let (cold, hot) = checked.ratings.charger.map_or_else(Default::default, |c| c.ambient);
+    let runs: Vec<Value> = charging
+        .runs
+        .iter()
+        .zip([cold, hot])
+        .map(|(run, ambient)| {
+            let l = &run.ledger;
+            json!({
+                "ambient_C": ambient.0, "ended": charger_end_name(run.end), "time_s": run.time.0,
+                "to_80_percent_s": run.to_mostly.map(|t| t.0), "put_in_Ah": run.charge.0, "soc_end": run.soc,
+                "trickle_s": run.phases[0].0, "constant_current_s": run.phases[1].0,
+                "constant_voltage_s": run.phases[2].0, "T_cell_max_C": run.cell_temperature_max.0,
+                "charger_heat_max_W": run.dissipation_max.0,
+                "energy_J": {
+                    "output": l.output.0, "load": l.load.0, "stored": l.stored.0, "entropic": l.entropic.0,
+                    "cell_ohmic": l.ohmic.0, "cell_polarisation": l.polarisation.0, "path": l.path.0,
+                },
+                "ledger_residual_rel": l.residual(), "steps": run.steps,
+            })
+        })
+        .collect();
+    let left = &charging.left_on;
+    json!({
+        "soc_start": charging.soc, "runs": runs,
+        "load_left_on": {
+            "cell_at_constant_current_A": left.in_constant_current.0, "cell_in_trickle_A": left.in_trickle.0,
+            "terminates": left.terminates,
+        },
+    })
+}
+
+/// The name of what ended a charge by the charger.
+pub fn charger_end_name(end: charger::End) -> &'static str {
+    match end {
+        charger::End::Terminated => "terminated",
+        charger::End::NeverTerminates => "never_terminates",
+        charger::End::NeverRecovers => "never_recovers",
+        charger::End::DischargesWhileCharging => "discharges_while_charging",
+        charger::End::BeyondFull => "beyond_full",
+        charger::End::WorkLimit => "work_limit",
+    }
 }
 
 fn verdict_json(setup: &Setup, overall: &Overall) -> Value {

@@ -5,15 +5,18 @@ use strikeline_core::setup::Setup;
 use strikeline_design::check::Checked;
 use strikeline_design::report::{Answers, Further};
 
+use crate::charging;
 use crate::number::{degrees, escaped, percent};
 use crate::results::Results;
 use crate::sentences;
 
 /// The sections for a design, `width` px wide.
-pub fn further(checked: &Checked, _answers: &Answers, further: &Further, _width: f64) -> Results {
+pub fn further(checked: &Checked, answers: &Answers, further: &Further, width: f64) -> Results {
     let setup = &checked.nominal;
     let said: String = further.margins.iter().map(|m| margins(setup, m)).collect();
-    Results { markup: format!("<h2 id=\"margins\">Margins</h2>{said}"), charts: vec![] }
+    let charging = charging::charging(checked, answers, further.charging.as_ref(), width);
+    let markup = format!("<h2 id=\"margins\">Margins</h2>{said}{}", charging.markup);
+    Results { markup, charts: charging.charts }
 }
 
 fn margins(setup: &Setup, margins: &Margins) -> String {

@@ -5,6 +5,7 @@
 //! and a text for screen readers, and cost a few kilobytes of download.
 
 pub mod arrangements;
+pub mod charging;
 pub mod chart;
 pub mod form;
 pub mod further;
