@@ -17,6 +17,7 @@ use crate::margins::Corners;
 use crate::ratings::{Band, Ratings};
 use crate::report::{ChargeReport, Limit, Protector};
 use crate::setup::{Arrangement, Setup};
+use crate::thermal::BARE_METAL;
 use crate::units::{Amps, Celsius, Coulombs, Farads, Joules, Seconds, Volts, Watts};
 use check::Look;
 pub use law::{
@@ -35,9 +36,9 @@ pub const SWITCH_LOOK: Celsius = Celsius(100.0);
 /// Junction temperature that silicon switches are rated to. Common practice, no source.
 pub const SWITCH_STOP: Celsius = Celsius(150.0);
 /// Touched for ten minutes, bare metal burns from about here. ISO 13732-1, from memory.
-pub const TOUCH_LOOK: Celsius = Celsius(48.0);
+pub const TOUCH_LOOK: Celsius = BARE_METAL[3].1;
 /// Touched for half a second, bare metal burns from about here. ISO 13732-1, 4.2.1.2, as quoted.
-pub const TOUCH_STOP: Celsius = Celsius(65.0);
+pub const TOUCH_STOP: Celsius = BARE_METAL[0].1;
 /// What a closed case does to every rise over ambient. Our choice, a rough one.
 pub const CLOSED_CASE: f64 = 2.0;
 /// Heat transfer from a bare conductor, in W/(m²·K): convection and radiation in still air give about 10 to 12.

@@ -19,6 +19,7 @@ pub mod ratings;
 pub mod replay;
 pub mod report;
 pub mod setup;
+pub mod thermal;
 pub mod time_current;
 pub mod units;
 pub mod verdict;
