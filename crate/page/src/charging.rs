@@ -40,7 +40,7 @@ pub fn charging(checked: &Checked, answers: &Answers, charging: Option<&Charging
         .map(|text| format!("<li>{text}</li>"))
         .collect();
     let markup = format!(
-        "{head}<p>{}</p><ul>{items}</ul><div class=\"two\">{figures}</div>{}",
+        "{head}<p>{}</p><ul class=\"judged\">{items}</ul><div class=\"two\">{figures}</div>{}",
         lead(charger, charging, answers.charge.full_presses > 0),
         cautions()
     );
@@ -106,13 +106,19 @@ fn duration(s: f64) -> String {
     format!("{} h {} min", fixed((minutes / 60.0).floor(), 0), fixed(minutes % 60.0, 0))
 }
 
-/// A judgement in word and shape.
-fn mark(within: Option<bool>) -> &'static str {
+/// A judgement in word and shape: of the typical value, and of the worst that the tolerance allows.
+fn mark(within: Option<(bool, bool)>) -> &'static str {
     match within {
-        Some(true) => "<b>● Within.</b>",
-        Some(false) => "<b>▲ Not within.</b>",
+        Some((true, true)) => "<b>● Within.</b>",
+        Some((true, false)) => "<b>◆ Only nearly.</b>",
+        Some((false, _)) => "<b>▲ Not within.</b>",
         None => "<b>○ Not judged.</b>",
     }
+}
+
+/// The same where nothing has a tolerance.
+fn plain(within: bool) -> Option<(bool, bool)> {
+    Some((within, within))
 }
 
 fn items(ratings: &Ratings, charger: &Charger, parallel: u32, charging: &Charging) -> Vec<String> {
@@ -122,12 +128,12 @@ fn items(ratings: &Ratings, charger: &Charger, parallel: u32, charging: &Chargin
     let rate = format!("{} It", fixed(typical / cell.it.0, 2));
     let shared = if parallel > 1 { " for each cell" } else { "" };
     let limit = match cell.charge {
-        Some(limit) => format!("the cell stands {}", amps(limit.0)),
+        Some(limit) => format!("the cell may have {}", amps(limit.0)),
         None => "the cell’s own limit is not entered".into(),
     };
     let current = format!(
         "{} Charge current {}{shared}, at most {}: {rate}; {limit}.",
-        mark(cell.charge.map(|limit| most <= limit.0)),
+        mark(cell.charge.map(|limit| (typical <= limit.0, most <= limit.0))),
         amps(typical),
         amps(most)
     );
@@ -136,19 +142,21 @@ fn items(ratings: &Ratings, charger: &Charger, parallel: u32, charging: &Chargin
     let window = cell.charge_window;
     let inside = cold >= window.0 && hottest <= window.1.0.min(CHARGE_HOT_STOP.0);
     let temperature = format!(
-        "{} Charged from {} to {}, the cell at most {}; it may be charged from {} to {}. A cell charged in the cold plates lithium, for good and unseen.",
-        mark(Some(inside)),
+        "{} Charged from {} to {}, the cell at most {}; it may be charged from {} to {}. Below that lithium plates out, for good and unseen.",
+        mark(plain(inside)),
         degrees(cold.0),
         degrees(hot.0),
         degrees(hottest),
         degrees(window.0.0),
         degrees(window.1.0)
     );
+    let most = cell.voltage_max.0 + 1e-9;
     let float = format!(
-        "{} Charge voltage {} to {}; the cell stands {}.",
-        mark(Some(charger.float.high <= cell.voltage_max.0 + 1e-9)),
+        "{} Charge voltage {} to {}, set to {}; the cell may have {}.",
+        mark(Some((charger.float.typical <= most, charger.float.high <= most))),
         volts3(charger.float.low),
         volts3(charger.float.high),
+        volts3(charger.float.typical),
         volts3(cell.voltage_max.0)
     );
     vec![current, temperature, float, left_on(charger, charging), heat(charger, &charging.runs)]
@@ -165,14 +173,14 @@ fn left_on(charger: &Charger, charging: &Charging) -> String {
     if load == 0.0 {
         return format!(
             "{} Nothing draws current meanwhile. From {} on a load would keep the charge from ending.",
-            mark(Some(true)),
+            mark(plain(true)),
             amps(charger.termination.0)
         );
     }
     let fine = left.terminates && left.in_trickle.0 > 0.0 && left.in_constant_current.0 > 0.0;
     format!(
         "{} The device draws {} meanwhile: the cell gets {} at constant current and {} in trickle, and the charge {}.",
-        mark(Some(fine)),
+        mark(plain(fine)),
         amps(load),
         amps(left.in_constant_current.0),
         amps(left.in_trickle.0),
@@ -197,7 +205,7 @@ fn heat(charger: &Charger, runs: &[ChargeRun; 2]) -> String {
     };
     format!(
         "{} A linear charger at {} turns at most {} W into heat{mean}; {limit}.",
-        mark(charger.power_limit.map(|limit| most <= limit.0)),
+        mark(charger.power_limit.and_then(|limit| plain(most <= limit.0))),
         volts(charger.input.0),
         fixed(most, 2)
     )
@@ -207,7 +215,7 @@ fn cautions() -> String {
     "<p><b>Whenever it is charged</b> (common practice, no source): stay with it, on a surface that does not burn, with nothing that burns near it. \
      Stop and take it outside if the cell swells, smells, hisses or gets hot to the touch. \
      Never charge a cell that is swollen, dented, wet, below 0 °C or has been below 2 V. \
-     Do not press the button while it is charged. The board’s over-charge protection stays in the path: a charger can fail.</p>"
+     Do not press the button while it is charged. Keep the board’s over-charge protection in the path: a charger can fail.</p>"
         .into()
 }
 
@@ -266,6 +274,7 @@ fn current(run: &ChargeRun, charger: &Charger) -> Chart {
         values: run.trace.iter().map(|p| p.current.0).collect(),
     }];
     let ends = charger.termination.0;
+    chart.named_left = true;
     chart.levels = vec![Level { name: format!("ends at {}", amps(ends)), value: ends }];
     chart.summary =
         format!("Current into the cell over {}; it ends at {}.", duration(run.time.0), amps(ends));
@@ -299,6 +308,8 @@ mod tests {
     fn exact_every_ending_has_its_words() {
         let of = |load: &str| said(&[("charger.fitted", "yes"), ("charger.load", load)]).markup;
         let fine = of("0 mA");
+        // 4.2 V ± 1.5 % on a cell of 4.2 V: its typical value is within, its highest not.
+        assert!(fine.contains("◆ Only nearly.</b> Charge voltage 4.137 V to 4.263 V"), "{fine}");
         assert!(fine.contains("to full: <b>") && !fine.contains("NaN"), "{fine}");
         assert!(of("150 mA").contains("never ends"));
         assert!(of("3 A").contains("▲ Stop."));
