@@ -4,6 +4,7 @@
 //! compiler does not have or cannot fetch through cargo, rustup or (on Debian, as root) apt-get.
 
 mod check;
+mod finish;
 mod server;
 mod tools;
 
@@ -73,7 +74,9 @@ fn build() -> Result<PathBuf, String> {
         .args(["build", "--release", "--locked"])
         .env("PATH", &path)
         .env_remove("NO_COLOR"))?;
-    Ok(root().join("dist"))
+    let folder = root().join("dist");
+    finish::finish(&folder)?;
+    Ok(folder)
 }
 
 fn serve(options: &[&str]) -> Result<(), String> {
