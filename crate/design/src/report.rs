@@ -38,13 +38,13 @@ pub struct Answers {
     pub cold: Option<ChargeReport>,
     /// What was found that can harm.
     pub hazards: Hazards,
-    /// What each of the four arrangements keeps and loses.
-    pub arrangements: [Arranged; 4],
 }
 
 /// What is computed beside the answers, and takes as long again.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Further {
+    /// What each of the four arrangements keeps and loses.
+    pub arrangements: [Arranged; 4],
     /// Margins over the charge at ambient temperature, and in the coldest surroundings where those are colder.
     pub margins: Vec<Margins>,
     /// What a press does over charge and temperature.
@@ -103,9 +103,8 @@ pub fn answer(checked: &Checked) -> Answers {
         cold_charge: cold.as_ref(),
         ratings,
     });
-    let arrangements = arrangements::compare(&Given { corners, charge: &charge, ratings });
     let verdict = verdict::weigh(verdict::judge(&charge, &weak), &hazards);
-    Answers { charge, weak, press, half, verdict, cold, hazards, arrangements }
+    Answers { charge, weak, press, half, verdict, cold, hazards }
 }
 
 fn corners(checked: &Checked) -> margins::Corners<'_> {
@@ -130,7 +129,8 @@ pub fn further(checked: &Checked, answers: &Answers) -> Further {
         let runs = [run(fitted.ambient.0), run(fitted.ambient.1)];
         Charging { soc, runs, left_on: charger::load_left_on(&fitted, load) }
     });
-    Further { margins, map, diagram, charging }
+    let arrangements = arrangements::compare(&Given { corners, charge: &answers.charge, ratings });
+    Further { arrangements, margins, map, diagram, charging }
 }
 
 /// What a report holds beside verdict and summaries.

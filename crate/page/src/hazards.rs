@@ -628,7 +628,7 @@ mod tests {
     use crate::arrangements;
     use strikeline_design::check::check;
     use strikeline_design::design::Design;
-    use strikeline_design::report::answer;
+    use strikeline_design::report::{answer, further};
 
     /// What no sentence may say: words that a reader in a hurry takes as leave.
     const LEAVE: [&str; 12] = [
@@ -701,7 +701,7 @@ mod tests {
                 assert!(!text.title.is_empty() && !hazard::source(&f.kind).is_empty());
             }
             let all = section(&checked.nominal, &answers.hazards)
-                + &arrangements::section(&checked.nominal, &answers.arrangements);
+                + &arrangements::section(&checked.nominal, &further(&checked, &answers).arrangements);
             let small = all.to_lowercase();
             for leave in LEAVE {
                 assert!(!small.contains(leave), "“{leave}” in {design:?}");

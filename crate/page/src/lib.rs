@@ -10,8 +10,10 @@ pub mod chart;
 pub mod form;
 pub mod further;
 pub mod hazards;
+pub mod margins;
 pub mod number;
 pub mod results;
 pub mod sentences;
+pub mod time_current;
 #[cfg(target_arch = "wasm32")]
 pub mod view;

@@ -7,9 +7,7 @@ use strikeline_core::verdict::{self, Part};
 use strikeline_design::check::Checked;
 use strikeline_design::report::Answers;
 
-use crate::arrangements;
 use crate::chart::{self, Chart, Level, Line, Stair};
-use crate::hazards;
 use crate::number::{amps, escaped, fixed, percent, time, volts};
 use crate::sentences;
 
@@ -53,7 +51,7 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
          {facts}\
          <figure><figcaption>Where the voltage goes<span>{stairs_note}</span></figcaption>{stairs}</figure>\
          <h2 id=\"one-press\">One press</h2>{f0}<div class=\"two\">{f1}{sense}</div>{events}\
-         <h2 id=\"one-charge\">One charge</h2><p>{charge_sentence}</p><div class=\"two\">{f2}{f3}</div>{energy}{hazards}{wiring}",
+         <h2 id=\"one-charge\">One charge</h2><p>{charge_sentence}</p><div class=\"two\">{f2}{f3}</div>{energy}",
         tone = said.tone,
         word = said.word,
         sentence = escaped(&said.sentence),
@@ -78,8 +76,6 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
             pair
         ),
         energy = energy(answers),
-        hazards = hazards::section(setup, &answers.hazards),
-        wiring = arrangements::section(setup, &answers.arrangements),
     );
     Results { markup, charts }
 }
