@@ -98,23 +98,26 @@ pub fn section(setup: &Setup, all: &[Arranged; 4]) -> String {
             )
         })
         .collect();
-    let lost: String = all
-        .iter()
-        .filter(|a| a.arrangement != Arrangement::ThroughBoard)
-        .map(|a| {
-            let standby = a.standby.map_or_else(
-                || "no standby drain is entered".to_string(),
-                |t| format!("the standby drain empties the cell in {}", hazards::long(t.0)),
-            );
-            format!(
-                "<li><b>{}.</b> A short at the load, full cell, {}; nearly empty, {}. Button held after the last press: {}. Put away at the recharge mark: {standby}.</li>",
-                name(a.arrangement),
-                short(&a.short_full),
-                amps(a.short_empty.current.0),
-                hazards::held(&a.held)
-            )
-        })
-        .collect();
+    // Ways of wiring that lose the same are told together.
+    let mut lost: Vec<(Vec<&str>, String)> = Vec::new();
+    for a in all.iter().filter(|a| a.arrangement != Arrangement::ThroughBoard) {
+        let standby = a.standby.map_or_else(
+            || "no standby drain is entered".to_string(),
+            |t| format!("the standby drain empties the cell in {}", hazards::long(t.0)),
+        );
+        let text = format!(
+            "A short at the load, full cell, {}; nearly empty, {}. Button held after the last press: {}. Put away at the recharge mark: {standby}.",
+            short(&a.short_full),
+            amps(a.short_empty.current.0),
+            hazards::held(&a.held)
+        );
+        match lost.iter_mut().find(|(_, said)| *said == text) {
+            Some((names, _)) => names.push(name(a.arrangement)),
+            None => lost.push((vec![name(a.arrangement)], text)),
+        }
+    }
+    let lost: String =
+        lost.iter().map(|(names, text)| format!("<li><b>{}.</b> {text}</li>", names.join(" · "))).collect();
     format!(
         "<h2 id=\"wiring\">What each wiring keeps</h2>\
          <p>What still opens, with the figures of this design. A way of wiring in which nothing opens leaves only luck between a short and a fire.</p>\

@@ -210,8 +210,16 @@ impl Chart {
             self.unit
         );
         for (x, text) in self.x_ticks(width) {
+            // At the ends of the axis inside of it.
+            let (x, anchor) = if x < LEFT + 6.0 {
+                (LEFT + 1.0, "start")
+            } else if x > width - RIGHT - 14.0 {
+                (width - RIGHT, "end")
+            } else {
+                (x, "middle")
+            };
             out += &format!(
-                "<text class=\"axis\" x=\"{x:.1}\" y=\"{foot}\" text-anchor=\"middle\">{text}</text>"
+                "<text class=\"axis\" x=\"{x:.1}\" y=\"{foot}\" text-anchor=\"{anchor}\">{text}</text>"
             );
         }
         out += &format!(

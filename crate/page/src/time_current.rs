@@ -1,6 +1,7 @@
 //! The time–current diagram, log–log, and what it says in words.
 
 use strikeline_core::math::{ln, powf};
+use strikeline_core::ratings::LeadRating;
 use strikeline_core::setup::Setup;
 use strikeline_core::time_current::{ADIABATIC_UP_TO, AtCurrent, Diagram, Opener, fuse_times};
 use strikeline_core::units::Amps;
@@ -22,6 +23,18 @@ fn opener(setup: &Setup, what: Opener) -> String {
         Opener::Stage(limit) => sentences::limit(setup, limit),
         Opener::Fuse => "the fuse".into(),
     }
+}
+
+/// A decade of time.
+fn tick(t: f64) -> String {
+    let (scale, unit) = if t < 0.9e-3 {
+        (1e6, "µs")
+    } else if t < 0.9 {
+        (1e3, "ms")
+    } else {
+        (1.0, "s")
+    };
+    format!("{:.0} {unit}", t * scale)
 }
 
 struct Frame {
@@ -55,11 +68,13 @@ impl Frame {
 }
 
 /// Names beside lines, each moved down until it covers none before it.
-struct Names(Vec<(f64, f64, f64)>, String);
+struct Names(Vec<(f64, f64, f64)>, String, f64);
 
 impl Names {
     fn put(&mut self, x: f64, y: f64, class: &str, text: &str, end: bool) {
         let wide = 7.2 * text.chars().count() as f64;
+        // What would leave the frame at the right ends there.
+        let (x, end) = if !end && x + wide > self.2 { (self.2, true) } else { (x, end) };
         let left = if end { x - wide } else { x };
         let mut y = y;
         while self.0.iter().any(|(l, r, at)| left < *r && left + wide > *l && (y - at).abs() < 15.0) {
@@ -95,7 +110,7 @@ pub fn svg(setup: &Setup, d: &Diagram, width: f64) -> String {
             "<path class=\"grid\" d=\"M{LEFT} {y:.1}H{:.1}\"/><text class=\"axis\" x=\"{}\" y=\"{y:.1}\" dy=\"4\" text-anchor=\"end\">{}</text>",
             width - RIGHT,
             LEFT - 6.0,
-            time(decade)
+            tick(decade)
         );
         decade *= 10.0;
     }
@@ -119,7 +134,7 @@ pub fn svg(setup: &Setup, d: &Diagram, width: f64) -> String {
         width - RIGHT,
         f.height - 6.0
     );
-    let mut names = Names(Vec::new(), String::new());
+    let mut names = Names(Vec::new(), String::new(), width - RIGHT);
     for stage in &d.stages {
         let Some(from) = stage.low else { continue };
         let sure = stage.high.map_or(high, |i| i.0);
@@ -154,7 +169,10 @@ pub fn svg(setup: &Setup, d: &Diagram, width: f64) -> String {
             names.put(f.x(*i) + 5.0, f.y(*t) + 12.0, "soft", "Fuse, earliest and latest", false);
         }
     }
-    for lead in &d.leads {
+    let same =
+        |a: &LeadRating, b: &LeadRating| (a.area_mm2, a.initial, a.last) == (b.area_mm2, b.initial, b.last);
+    let alike = d.leads.len() == 2 && same(&d.leads[0], &d.leads[1]);
+    for lead in d.leads.iter().take(if alike { 1 } else { 2 }) {
         let k = wiring::adiabatic_k(lead.initial, lead.last);
         let limit = wiring::let_through_a2s(k, lead.area_mm2);
         let at = |t: f64| (limit / t).sqrt();
@@ -168,7 +186,11 @@ pub fn svg(setup: &Setup, d: &Diagram, width: f64) -> String {
                 f.x(line[0].0) + 5.0,
                 f.y(line[0].1) - 4.0,
                 "fails",
-                if lead.cell_side { "Lead, cell to board: harmed" } else { "Lead, board to load: harmed" },
+                match (alike, lead.cell_side) {
+                    (true, _) => "Leads: harmed",
+                    (false, true) => "Lead, cell to board: harmed",
+                    (false, false) => "Lead, board to load: harmed",
+                },
                 false,
             );
         }
