@@ -48,6 +48,36 @@ async fn whole_path(browser: &Browser) {
     assert_eq!(back, json!("0.75 mm²"));
 }
 
+/// Hazards, wiring, margins, map, time and current, charging: below the results, a moment later.
+async fn safety(browser: &Browser) {
+    browser.open("").await;
+    browser.until("document.getElementById('charging')").await;
+    let ids =
+        browser.script("return [...document.querySelectorAll('#further h2')].map(h => h.id).join(' ')").await;
+    assert_eq!(ids, json!("hazards wiring margins time-and-current charging"));
+    let checks = browser.text("#further p").await;
+    assert!(checks.contains("checks were made"), "{checks}");
+
+    // Without a board it is not built so, whatever the current alone would do.
+    browser.fill("board.arrangement", "no_board").await;
+    assert!(browser.text(".word").await.contains("Fails"));
+    let said = browser.text(".sentence").await;
+    assert!(said.starts_with("Do not build it so"), "{said}");
+    browser.until("document.querySelectorAll('.hazards .stop').length >= 2").await;
+    browser.script("document.getElementById('undo').click()").await;
+    assert!(browser.text(".word").await.contains("Borderline"));
+
+    // A class of board fills the board's fields; one step back takes it away again.
+    browser
+        .script("const list = document.getElementById('board-class'); list.value = 'three_level'; list.dispatchEvent(new Event('change', { bubbles: true }))")
+        .await;
+    let second = "return document.getElementById('f-board-stage2').value";
+    assert!(browser.script(second).await.as_str().is_some_and(|t| t.contains("mV")));
+    assert!(browser.text("#notice").await.contains("Undo takes it back"));
+    browser.script("document.getElementById('undo').click()").await;
+    assert_eq!(browser.script(second).await, json!(""));
+}
+
 async fn links(browser: &Browser) {
     // The address holds the design: opened elsewhere it gives the same.
     let mut design = Design::demo();
@@ -149,6 +179,7 @@ fn page_in_a_browser() {
     runtime.block_on(async {
         let browser = Browser::start().await;
         whole_path(&browser).await;
+        safety(&browser).await;
         links(&browser).await;
         same_report(&browser).await;
         quick(&browser).await;

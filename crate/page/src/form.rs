@@ -1,8 +1,8 @@
 //! The form as markup, made from the catalogue.
 
-use strikeline_design::catalogue::{FIELDS, Field, Kind, PARTS, Part};
+use strikeline_design::catalogue::{self, FIELDS, Field, Kind, PARTS, Part};
 use strikeline_design::design::Design;
-use strikeline_design::quantity;
+use strikeline_design::{quantity, shipped};
 
 use crate::number::escaped;
 
@@ -36,7 +36,39 @@ fn part_markup(design: &Design, part: Part, name: &str) -> String {
     } else {
         format!("<details><summary>{more}</summary>{folded}</details>")
     };
-    format!("<section class=\"part\">{heading}{plain}{folded}</section>")
+    let (start, helps) = if part == Part::Board { (classes(), board_helps()) } else { Default::default() };
+    format!("<section class=\"part\">{heading}{start}{plain}{helps}{folded}</section>")
+}
+
+/// The id of the list of board classes.
+pub const CLASS: &str = "board-class";
+
+/// A class of board to start from, for those who know only its marking.
+fn classes() -> String {
+    let options: String = shipped::board_classes()
+        .iter()
+        .map(|c| format!("<option value=\"{}\">{}</option>", c.key, escaped(c.label)))
+        .collect();
+    format!(
+        "<div class=\"field wide\"><label for=\"{CLASS}\">Known by its marking only? Start from a class</label>\
+         <select id=\"{CLASS}\"><option value=\"\">as entered below</option>{options}</select></div>"
+    )
+}
+
+/// Where the figures of a board stand, and how to measure its pair.
+fn board_helps() -> String {
+    let numbers: String = shipped::FOUR_NUMBERS
+        .iter()
+        .map(|(key, text)| {
+            let label = catalogue::field(key).map_or("", |f| f.label);
+            format!("<li><b>{}</b>: {}</li>", escaped(label), escaped(text))
+        })
+        .collect();
+    let steps: String = shipped::PAIR_BY_METER.iter().map(|s| format!("<li>{}</li>", escaped(s))).collect();
+    format!(
+        "<details class=\"how\"><summary>Four figures to copy from data sheets</summary><ul>{numbers}</ul></details>\
+         <details class=\"how\"><summary>No data sheet: the pair by supply and meter</summary><ol>{steps}</ol></details>"
+    )
 }
 
 /// What a field accepts, in words.

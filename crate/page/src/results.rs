@@ -1,10 +1,12 @@
 //! The right-hand side as markup: verdict, facts, staircase, one press, one charge.
 
 use strikeline_core::board::{SensePoint, Stage, Threshold};
+use strikeline_core::driver;
 use strikeline_core::report::{EventKind, Mode, PressReport};
 use strikeline_core::setup::Setup;
+use strikeline_core::units::Volts;
 use strikeline_core::verdict::{self, Part};
-use strikeline_design::check::Checked;
+use strikeline_design::check::{Checked, Estimate};
 use strikeline_design::report::Answers;
 
 use crate::chart::{self, Chart, Level, Line, Stair};
@@ -47,7 +49,7 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
     };
     let press_note = "first press of a full cell; time from switch closing, each decade as wide as the last";
     let markup = format!(
-        "<div class=\"verdict {tone}\"><h1 class=\"word\">{word}</h1><p class=\"sentence\">{sentence}</p><p class=\"decided\">{decided}</p></div>\
+        "<div class=\"verdict {tone}\"><h1 class=\"word\">{word}</h1><p class=\"sentence\">{sentence}</p><p class=\"decided\">{decided}</p>{estimate}</div>\
          {facts}\
          <figure><figcaption>Where the voltage goes<span>{stairs_note}</span></figcaption>{stairs}</figure>\
          <h2 id=\"one-press\">One press</h2>{f0}<div class=\"two\">{f1}{sense}</div>{events}\
@@ -56,6 +58,7 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
         word = said.word,
         sentence = escaped(&said.sentence),
         decided = escaped(&said.decided),
+        estimate = checked.estimate.as_ref().map(estimate).unwrap_or_default(),
         facts = facts(setup, answers),
         stairs_note = stairs_note(answers),
         stairs = stairs(setup, answers, inner),
@@ -78,6 +81,26 @@ pub fn results(checked: &Checked, answers: &Answers, width: f64) -> Results {
         energy = energy(answers),
     );
     Results { markup, charts }
+}
+
+/// What the strike voltage rests on where it is an estimate.
+fn estimate(e: &Estimate) -> String {
+    let kv = |v: f64| format!("{} kV", fixed(v * 1e-3, 1));
+    let full = Volts(4.2);
+    let tank = e.tank.map_or_else(String::new, |t| {
+        let flow =
+            e.tank_current(full).map_or_else(String::new, |i| format!(", {} in its capacitors", amps(i.0)));
+        format!(" The tank runs at {} kHz{flow}.", fixed(t.frequency.0 * 1e-3, 0))
+    });
+    format!(
+        "<p class=\"estimate\"><b>◆ Estimated, not measured.</b> The gap breaks down at {} to {} peak; by turns alone that takes {} to {} at the load. A winding peaks at {} from {} (π times).{tank} Turn a bench supply up slowly and measure the strike voltage before anything is soldered.</p>",
+        kv(e.gap.low.0),
+        kv(e.gap.high.0),
+        volts(e.strike.low.0),
+        volts(e.strike.high.0),
+        volts(driver::winding_peak(full).0),
+        volts(full.0)
+    )
 }
 
 fn fact(name: &str, value: &str, note: &str) -> String {

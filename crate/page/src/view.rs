@@ -7,7 +7,7 @@ use strikeline_design::catalogue::{FIELDS, field};
 use strikeline_design::check::{self, Checked, Fault};
 use strikeline_design::design::Design;
 use strikeline_design::report::Answers;
-use strikeline_design::{file, link, report};
+use strikeline_design::{file, link, report, shipped};
 use wasm_bindgen::JsCast;
 use wasm_bindgen::prelude::*;
 use web_sys::{
@@ -358,6 +358,19 @@ impl Page {
         self.compute();
     }
 
+    /// The board's fields from a class; one step back takes it away again.
+    fn start_from(&mut self, key: &str) {
+        let mut design = self.design.clone();
+        let Some(class) = shipped::board_classes().iter().find(|c| c.key == key) else { return };
+        if shipped::apply(&mut design, key) {
+            self.replace(design);
+            self.notice(&format!("{}: {} Undo takes it back.", class.label, class.about));
+            if let Some(list) = self.element(form::CLASS).and_then(|e| e.dyn_into::<HtmlElement>().ok()) {
+                list.focus().ok();
+            }
+        }
+    }
+
     fn step(&mut self, back: bool) {
         let from = if back { self.before.pop() } else { self.after.pop() };
         let Some(design) = from else { return };
@@ -466,6 +479,15 @@ fn listen(shared: &Shared) {
                 && let (Some(key), Some(text)) = (element.get_attribute("data-key"), text_of(&element))
             {
                 page.typed(&key, &text);
+            }
+        });
+    }
+    if let Some(form) = document.get_element_by_id("form") {
+        on(&form, "change", shared, |page, event| {
+            if let Some(list) = target(event).filter(|e| e.id() == form::CLASS)
+                && let Some(key) = text_of(&list)
+            {
+                page.start_from(&key);
             }
         });
     }
