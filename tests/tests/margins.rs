@@ -311,6 +311,167 @@ fn exact_map_is_made_of_presses() {
     assert_ne!(map.outcomes[0][3], Outcome::Holds);
 }
 
+/// The press with the samples that the diagram is drawn from.
+fn sampled(setup: &Setup) -> strikeline_core::report::PressReport {
+    let options = PressOptions { samples: press::sample_times(setup.usage.press), ..PressOptions::default() };
+    press::run(setup, &PressStart::relaxed(setup, 1.0, setup.usage.ambient), &options)
+}
+
+/// The longest time at or above `amps` that an envelope tells: that of the next level it holds.
+fn longest(envelope: &[(Amps, Seconds)], amps: f64) -> f64 {
+    envelope.iter().find(|(level, _)| level.0 >= amps).map_or(0.0, |(_, time)| time.0)
+}
+
+#[test]
+fn exact_envelope_of_an_inrush() {
+    // 4 V behind 0.1 Ω into 100 µF: 40 A·exp(−t/10 µs), and 0.4 A through 10 Ω in the end.
+    let mut setup = flat::setup(
+        flat::cell(Volts(4.0), Ohms(0.1)),
+        Ohms(0.0),
+        flat::capacitor(strikeline_core::units::Farads(100e-6), Ohms(1e6)),
+        Seconds(0.01),
+    );
+    setup.usage.ambient = flat::ROOM;
+    let ratings = demo().ratings;
+    let envelope = time_current::diagram(same(&setup), &ratings, &sampled(&setup)).envelope;
+    let top = envelope.last().expect("a level").0.0;
+    assert!((top - 40.0).abs() < 1e-3, "{top}");
+    let mut looked = 0;
+    for (level, time) in &envelope {
+        if level.0 > 39.0 || level.0 < 1.0 {
+            continue;
+        }
+        let exact = 10e-6 * (40.0 / level.0).ln();
+        // The levels are the samples' own currents, so nothing is read between them.
+        assert!((time.0 - exact).abs() < 1e-9, "{} A: {} s, exactly {exact} s", level.0, time.0);
+        looked += 1;
+    }
+    assert!(looked > 8, "{looked}");
+}
+
+#[test]
+fn exact_envelope_carries_the_ripple_through_every_event() {
+    // 2 A with peaks of 2.6 A, and a stage at 2.5 A that is over from the start: an event amid the draw.
+    let mut load = flat::load(LitDraw::Current(Amps(2.0)));
+    load.peak_factor = 1.3;
+    load.strike_time = Seconds(0.02);
+    load.unlit = Ohms(2.0);
+    let mut setup = flat::setup(flat::cell(Volts(4.0), Ohms(0.001)), Ohms(0.0), load, Seconds(0.1));
+    setup.usage.ambient = flat::ROOM;
+    let ratings = demo().ratings;
+    let report = sampled(&setup);
+    assert!(report.events.iter().any(|e| (e.time.0 - 0.02).abs() < 1e-3), "no event amid the draw");
+    let envelope = time_current::diagram(same(&setup), &ratings, &report).envelope;
+    // Unlit and lit draw the same 2 A within a thousandth.
+    let time = longest(&envelope, 2.55);
+    assert!((time - 0.1).abs() < 1e-4, "{time} s at 2.55 A: {envelope:?}");
+}
+
+#[test]
+fn exact_envelope_of_a_press_that_strikes_and_trips() {
+    // 1.887 A unlit (4 V over 0.12 Ω and 2 Ω) for 1.234 ms, then 3.2 A lit; 150 mV over 50 mΩ is exceeded from there on,
+    // and the board opens 10 ms later.
+    let mut load = flat::load(LitDraw::Current(Amps(3.2)));
+    load.unlit = Ohms(2.0);
+    load.strike_time = Seconds(1.234e-3);
+    let setup = flat::with_board(
+        flat::setup(flat::cell(Volts(4.0), Ohms(0.05)), Ohms(0.02), load, Seconds(0.1)),
+        flat::board(Ohms(0.05), vec![flat::stage("stage", Volts(0.15), Seconds(0.01))]),
+    );
+    let ratings = demo().ratings;
+    let envelope = time_current::diagram(same(&setup), &ratings, &sampled(&setup)).envelope;
+    // The input capacitor of 1 µF behind 0.12 Ω gives way within a microsecond.
+    for (amps, exact) in [(3.15, 10e-3), (2.5, 10e-3), (1.88, 11.234e-3)] {
+        let time = longest(&envelope, amps);
+        assert!((time - exact).abs() < 2e-6, "{time} s at {amps} A, exactly {exact} s: {envelope:?}");
+    }
+}
+
+#[test]
+fn law_trip_edges_are_where_each_board_alone_would_trip() {
+    // With a corner's board as the only one, its typical edge is the edge of that corner.
+    let checked = demo();
+    let mut compared = 0;
+    for t in [20.0, 0.0] {
+        let all = margins::margins(corners(&checked), Celsius(t), 41).crossings;
+        let alone = |setup: &Setup| margins::margins(same(setup), Celsius(t), 41).crossings;
+        let (low, high) = (alone(&checked.low), alone(&checked.high));
+        let at = |list: &[margins::Crossing], edge: Edge| list.iter().find(|c| c.edge == edge).map(|c| c.soc);
+        for limit in margins::limits(&checked.nominal) {
+            for (edge, corner) in [(Edge::TripEarliest(limit), &low), (Edge::TripLatest(limit), &high)] {
+                let (got, expected) = (at(&all, edge), at(corner, Edge::TripTypical(limit)));
+                assert_eq!(
+                    got.is_some(),
+                    expected.is_some(),
+                    "{edge:?} at {t} °C: {got:?}, alone {expected:?}"
+                );
+                if let (Some(got), Some(expected)) = (got, expected) {
+                    assert!((got - expected).abs() <= 1e-4, "{edge:?} at {t} °C: {got}, alone {expected}");
+                    compared += 1;
+                }
+            }
+        }
+    }
+    assert!(compared > 0, "no edge was crossed");
+}
+
+/// What is harmed before anything opens.
+///
+/// Sources: IEC 60364-4-43, 434.5.2 (50 A through 0.75 mm² of PVC, k = 115: 2.976 s; 0.22 mm²: 0.256 s); T 3.15 A fuse at
+/// 15 A against a protector of 9 ms (S-8261), which is first.
+#[test]
+fn published_damage_lines_and_order() {
+    let lead = |area_mm2: f64| strikeline_core::ratings::LeadRating {
+        cell_side: true,
+        area_mm2,
+        length_m: 0.1,
+        ohm_per_m_20: 0.026,
+        initial: Celsius(70.0),
+        last: Celsius(160.0),
+        continuous: Celsius(70.0),
+    };
+    let setup = flat::with_board(
+        flat::setup(
+            flat::cell(Volts(4.0), Ohms(0.02)),
+            Ohms(0.005),
+            flat::load(LitDraw::Current(Amps(1.0))),
+            Seconds(0.01),
+        ),
+        flat::board(Ohms(0.05), vec![flat::stage("stage", Volts(0.5), Seconds::from_milli(9.0))]),
+    );
+    let mut ratings = demo().ratings;
+    ratings.leads = vec![lead(0.75), lead(0.22)];
+    ratings.fuse =
+        Some(Fuse { rating: Amps(3.15), kind: FuseKind::TimeLag, breaking: None, resistance: None });
+    ratings.cell.continuous = Some(Amps(5.0));
+    ratings.cell.pulse = Some(Amps(20.0));
+    ratings.cell.pulse_time = Seconds(1.0);
+    let report = sampled(&setup);
+    let mut diagram = time_current::diagram(same(&setup), &ratings, &report);
+    // 15 A: the stage, met from 10 A on, is first; the fuse takes 15/3.15 = 4.76 times its rating.
+    let at = diagram.at(Amps(15.0));
+    let stage = Opener::Stage(Limit::Stage(Protector::Board, 0));
+    assert_eq!(at.openings.iter().map(|o| o.what).collect::<Vec<_>>(), [stage, Opener::Fuse]);
+    assert_eq!(at.openings[0].latest, Some(Seconds::from_milli(9.0)));
+    assert!(at.never.is_empty() && at.cell_safe == Some(true) && at.leads_safe == [true, true]);
+    // Below the stage and below one and a half times the fuse's rating nothing opens, and 4.5 A is within the cell's own.
+    let at = diagram.at(Amps(4.5));
+    assert_eq!((at.never, at.cell_safe), (vec![stage, Opener::Fuse], Some(true)));
+    // 9 A: only the fuse, in its own time, which is longer than the cell's second.
+    let at = diagram.at(Amps(9.0));
+    assert_eq!((at.never, at.cell_safe), (vec![stage], Some(false)));
+    // Without board and fuse, 50 A reach the limit of both leads before anything opens.
+    diagram.stages.clear();
+    diagram.fuse = None;
+    let at = diagram.at(Amps(50.0));
+    let times: Vec<f64> = at.leads.iter().map(|t| t.expect("within five seconds").0).collect();
+    // k from the formula is 115 within the rounding of its three digits, so its square within one percent.
+    assert!((times[0] / 2.976 - 1.0).abs() < 0.01 && (times[1] / 0.256 - 1.0).abs() < 0.01, "{times:?}");
+    assert_eq!((at.leads_safe, at.cell_safe), (vec![false, false], Some(false)));
+    // 30 A take longer than the law holds for.
+    assert_eq!(diagram.at(Amps(30.0)).leads[0], None);
+}
+
 /// Printed trip currents and corners.
 #[test]
 fn published_trip_bands() {

@@ -57,6 +57,9 @@ pub struct Row {
     pub unlit: Option<Steady>,
     /// At its end, lit.
     pub lit: Option<Steady>,
+    /// Draw at that end with the board that trips earliest and with the one that trips latest: a draw of constant power
+    /// is larger through a pair of higher resistance.
+    pub corner_draws: [Option<Amps>; 2],
     /// Trip currents of every stage at that end; in the order of the stages, board first.
     pub trips: Vec<Trip>,
     /// Largest total resistance, cell included, with which the start still reaches the strike voltage.
@@ -65,7 +68,7 @@ pub struct Row {
     pub holds_up_to: Ohms,
 }
 
-/// What is crossed on the way from full to empty.
+/// What is crossed on the way from full to empty: the first time each, if it is crossed more than once.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Edge {
     /// The start no longer reaches the strike voltage.
@@ -368,19 +371,17 @@ impl<'a> View<'a> {
         let (end, lit) = self.end_of_press(soc);
         let cell_end = self.circuit.cell_now(end.soc, self.t);
         let peak = load.peak_factor;
+        let ends = corners.each_ref().map(|view| (view, view.end_of_press(soc)));
+        let at_corner = |(view, (end, _)): &(&View<'_>, (Place, Option<Steady>)), limit| {
+            let cell = view.circuit.cell_now(end.soc, view.t);
+            trip_in(view.setup, &view.circuit, &cell, end, limit, peak)
+        };
         let trips = limits(self.setup)
-            .map(|limit| {
-                let at_corner = |view: &View<'_>| {
-                    let (end, _) = view.end_of_press(soc);
-                    let cell = view.circuit.cell_now(end.soc, view.t);
-                    trip_in(view.setup, &view.circuit, &cell, &end, limit, peak)
-                };
-                Trip {
-                    limit,
-                    low: at_corner(&corners[0]),
-                    typical: trip_in(self.setup, &self.circuit, &cell_end, &end, limit, peak),
-                    high: at_corner(&corners[1]),
-                }
+            .map(|limit| Trip {
+                limit,
+                low: at_corner(&ends[0], limit),
+                typical: trip_in(self.setup, &self.circuit, &cell_end, &end, limit, peak),
+                high: at_corner(&ends[1], limit),
             })
             .collect();
         let hold_draw = self.circuit.lit_draw(load.hold.0).0;
@@ -389,6 +390,7 @@ impl<'a> View<'a> {
             open_circuit: Volts(cell.ocv),
             unlit,
             lit,
+            corner_draws: ends.map(|(_, (_, steady))| steady.map(|s| s.current)),
             trips,
             strikes_up_to: Ohms((cell.ocv - load.strike.0) * load.unlit.0 / load.strike.0),
             holds_up_to: Ohms((cell_end.ocv - end.polarisation.0 - load.hold.0) / hold_draw),
@@ -420,7 +422,8 @@ pub fn limits(setup: &Setup) -> impl Iterator<Item = Limit> + use<> {
 /// How far past an edge a row is; positive when past.
 fn past(setup: &Setup, row: &Row, edge: Edge) -> f64 {
     let draw = row.lit.map(|lit| lit.current.0);
-    let beyond = |trip: Option<Option<Amps>>| match (draw, trip) {
+    let [low_draw, high_draw] = row.corner_draws.map(|draw| draw.map(|i| i.0));
+    let beyond = |draw: Option<f64>, trip: Option<Option<Amps>>| match (draw, trip) {
         (Some(draw), Some(Some(trip))) => draw - trip.0,
         _ => -1.0,
     };
@@ -428,9 +431,9 @@ fn past(setup: &Setup, row: &Row, edge: Edge) -> f64 {
     match edge {
         Edge::Strike => setup.load.strike.0 - row.unlit.map_or(0.0, |s| s.load.0),
         Edge::Hold => setup.load.hold.0 - row.lit.map_or(0.0, |s| s.load.0),
-        Edge::TripEarliest(limit) => beyond(find(limit).map(|t| t.low)),
-        Edge::TripTypical(limit) => beyond(find(limit).map(|t| t.typical)),
-        Edge::TripLatest(limit) => beyond(find(limit).map(|t| t.high)),
+        Edge::TripEarliest(limit) => beyond(low_draw, find(limit).map(|t| t.low)),
+        Edge::TripTypical(limit) => beyond(draw, find(limit).map(|t| t.typical)),
+        Edge::TripLatest(limit) => beyond(high_draw, find(limit).map(|t| t.high)),
         Edge::OverDischarge(protector) => {
             let (board, supply) = match protector {
                 Protector::Board => (setup.board_in_path(), row.lit.map(|s| s.board)),

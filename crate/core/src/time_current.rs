@@ -6,9 +6,10 @@
 
 use crate::circuit::Circuit;
 use crate::margins::{self, Corners, Place};
+use crate::math::exp;
 use crate::press::{self, PressOptions, PressStart};
 use crate::ratings::{Band, CellRatings, Fuse, FuseKind, LeadRating, Ratings};
-use crate::report::{EventKind, Limit, PressEnd, PressReport, Protector};
+use crate::report::{Event, EventKind, Limit, Mode, PressEnd, PressReport, Protector};
 use crate::setup::Setup;
 use crate::units::{Amps, Celsius, Ohms, Seconds, Volts};
 use crate::wiring;
@@ -160,21 +161,50 @@ pub fn into(setup: &Setup, soc: f64, resistance: Ohms) -> Prospective {
     }
 }
 
+/// A point of the line that an envelope is drawn from.
+#[derive(Clone, Copy)]
+struct Seen {
+    time: f64,
+    /// What the stages see.
+    current: f64,
+    /// Something happened here: what rises after it rises at once, and not as slowly as the samples are apart.
+    event: bool,
+}
+
 /// For each current the longest time without a break that a press stays at or above it; the currents are those of its
 /// samples and events, every one that lasts longer than any above it.
 fn envelope(setup: &Setup, press: &PressReport) -> Vec<(Amps, Seconds)> {
     let extra = setup.load.peak_factor - 1.0;
-    let mut line: Vec<(f64, f64)> = press
+    let circuit = Circuit::new(setup);
+    let started = press.events.iter().find(|e| e.kind == EventKind::StartReached).map(|e| e.time.0);
+    // An event has the path's current, which nothing makes jump, but not the load's, which ripples.
+    let ripple = |mode: Mode, e: &Event| match (mode, started) {
+        (Mode::Unlit | Mode::Lit, Some(from)) => {
+            let load = &setup.load;
+            let left = || exp(-(e.time.0 - from) / load.surge_time.0);
+            let surge = if load.surge.0 > 0.0 { load.surge.0 * left() } else { 0.0 };
+            extra * (circuit.draw(mode, e.load.0).0 + surge)
+        }
+        _ => 0.0,
+    };
+    let mut line: Vec<Seen> = press
         .trace
         .iter()
         .map(|s| {
-            let runs = matches!(s.mode, crate::report::Mode::Unlit | crate::report::Mode::Lit);
-            (s.time.0, s.current.0 + if runs { extra * s.load_current.0 } else { 0.0 })
+            let runs = matches!(s.mode, Mode::Unlit | Mode::Lit);
+            let ripple = if runs { extra * s.load_current.0 } else { 0.0 };
+            Seen { time: s.time.0, current: s.current.0 + ripple, event: false }
         })
         .collect();
-    line.extend(press.events.iter().map(|e| (e.time.0, e.current.0)));
-    line.sort_by(|a, b| a.0.total_cmp(&b.0));
-    let mut levels: Vec<f64> = line.iter().map(|p| p.1).filter(|i| *i > 1e-3).collect();
+    let mut mode = Mode::Stalled;
+    for e in &press.events {
+        for mode in [mode, e.mode] {
+            line.push(Seen { time: e.time.0, current: e.current.0 + ripple(mode, e), event: true });
+        }
+        mode = e.mode;
+    }
+    line.sort_by(|a, b| a.time.total_cmp(&b.time));
+    let mut levels: Vec<f64> = line.iter().map(|p| p.current).filter(|i| *i > 1e-3).collect();
     levels.sort_by(f64::total_cmp);
     // A hundred levels tell the shape.
     let thin = levels.len().div_ceil(100).max(1);
@@ -185,26 +215,28 @@ fn envelope(setup: &Setup, press: &PressReport) -> Vec<(Amps, Seconds)> {
     chosen.into_iter().map(|level| (Amps(level), Seconds(longest_above(&line, level)))).collect()
 }
 
-fn longest_above(line: &[(f64, f64)], level: f64) -> f64 {
+fn longest_above(line: &[Seen], level: f64) -> f64 {
     let (mut longest, mut since) = (0.0_f64, None::<f64>);
     for pair in line.windows(2) {
-        let ((t0, i0), (t1, i1)) = (pair[0], pair[1]);
-        let meets =
-            |from: f64, to: f64| if to == from { t0 } else { t0 + (t1 - t0) * (level - from) / (to - from) };
-        match (i0 >= level, i1 >= level) {
+        let (from, to) = (pair[0], pair[1]);
+        let meets = || {
+            let share = (level - from.current) / (to.current - from.current);
+            from.time + (to.time - from.time) * share
+        };
+        match (from.current >= level, to.current >= level) {
             (true, true) => {
-                since.get_or_insert(t0);
+                since.get_or_insert(from.time);
             }
             (true, false) => {
-                let begun = since.take().unwrap_or(t0);
-                longest = longest.max(meets(i0, i1) - begun);
+                let begun = since.take().unwrap_or(from.time);
+                longest = longest.max(meets() - begun);
             }
-            (false, true) => since = Some(meets(i0, i1)),
+            (false, true) => since = Some(if from.event { from.time } else { meets() }),
             (false, false) => {}
         }
     }
     match (since, line.last()) {
-        (Some(begun), Some(last)) => longest.max(last.0 - begun),
+        (Some(begun), Some(last)) => longest.max(last.time - begun),
         _ => longest,
     }
 }
