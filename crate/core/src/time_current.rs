@@ -346,9 +346,9 @@ pub struct AtCurrent {
     pub never: Vec<Opener>,
     /// For each lead the time to its limit, up to [`ADIABATIC_UP_TO`]; `None`: longer than that.
     pub leads: Vec<Option<Seconds>>,
-    /// For each lead whether something is sure to open before its limit. A lead that takes longer than
-    /// [`ADIABATIC_UP_TO`] counts as safe for that long.
-    pub leads_safe: Vec<bool>,
+    /// For each lead whether something is sure to open before its limit; `None`: its limit is beyond
+    /// [`ADIABATIC_UP_TO`] and nothing is sure to open until then, so the line does not tell.
+    pub leads_safe: Vec<Option<bool>>,
     /// Whether the cell is within its own limits until something is sure to open; `None`: it has none entered.
     pub cell_safe: Option<bool>,
 }
@@ -389,7 +389,13 @@ impl Diagram {
                 (time.0 <= ADIABATIC_UP_TO.0).then_some(time)
             })
             .collect();
-        let leads_safe = leads.iter().map(|limit| limit.is_none_or(|t| cleared < t.0)).collect();
+        let leads_safe = leads
+            .iter()
+            .map(|limit| match limit {
+                Some(t) => Some(cleared < t.0),
+                None => (cleared <= ADIABATIC_UP_TO.0).then_some(true),
+            })
+            .collect();
         let cell_safe = match (self.pulse, self.continuous) {
             (None, None) => None,
             (pulse, continuous) => {
