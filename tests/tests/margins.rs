@@ -399,31 +399,33 @@ fn law_trip_edges_are_where_each_board_alone_would_trip() {
     // With a corner's board as the only one, its typical edge is the edge of that corner. The draw is a power, and so
     // depends on the board.
     let mut checked = demo();
-    for setup in [&mut checked.low, &mut checked.nominal, &mut checked.high] {
-        setup.load.lit = LitDraw::Power(strikeline_core::units::Watts(10.0));
-    }
-    let mut compared = 0;
-    for t in [20.0, 0.0] {
-        let all = margins::margins(corners(&checked), Celsius(t), 41).crossings;
-        let alone = |setup: &Setup| margins::margins(same(setup), Celsius(t), 41).crossings;
+    let mut within = [0, 0];
+    for watts in [4.0, 5.0, 6.0, 7.0, 8.0, 9.0, 10.0, 11.0, 12.0] {
+        for setup in [&mut checked.low, &mut checked.nominal, &mut checked.high] {
+            setup.load.lit = LitDraw::Power(strikeline_core::units::Watts(watts));
+        }
+        let t = Celsius(20.0);
+        let all = margins::margins(corners(&checked), t, 41).crossings;
+        let alone = |setup: &Setup| margins::margins(same(setup), t, 41).crossings;
         let (low, high) = (alone(&checked.low), alone(&checked.high));
         let at = |list: &[margins::Crossing], edge: Edge| list.iter().find(|c| c.edge == edge).map(|c| c.soc);
         for limit in margins::limits(&checked.nominal) {
-            for (edge, corner) in [(Edge::TripEarliest(limit), &low), (Edge::TripLatest(limit), &high)] {
+            let edges = [(Edge::TripEarliest(limit), &low), (Edge::TripLatest(limit), &high)];
+            for (k, (edge, corner)) in edges.into_iter().enumerate() {
                 let (got, expected) = (at(&all, edge), at(corner, Edge::TripTypical(limit)));
                 assert_eq!(
                     got.is_some(),
                     expected.is_some(),
-                    "{edge:?} at {t} °C: {got:?}, alone {expected:?}"
+                    "{edge:?}, {watts} W: {got:?}, alone {expected:?}"
                 );
                 if let (Some(got), Some(expected)) = (got, expected) {
-                    assert!((got - expected).abs() <= 1e-4, "{edge:?} at {t} °C: {got}, alone {expected}");
-                    compared += 1;
+                    assert!((got - expected).abs() <= 1e-4, "{edge:?}, {watts} W: {got}, alone {expected}");
+                    within[k] += u32::from(expected < 1.0);
                 }
             }
         }
     }
-    assert!(compared > 0, "no edge was crossed");
+    assert!(within.iter().all(|n| *n > 0), "an edge was never crossed within the charge: {within:?}");
 }
 
 #[test]
