@@ -123,6 +123,13 @@ fn exact_a_class_of_board_takes_the_place_of_the_designs_own() {
     assert_eq!(output.status.code(), Some(0));
     assert_eq!(stdout(&output), stdout(&run(&[&none])));
     assert_ne!(stdout(&output), stdout(&run(&[&short])));
+    let report: serde_json::Value = serde_json::from_str(&stdout(&output)).expect("JSON");
+    assert_eq!(report["hazards"]["findings"][0]["level"], "stop");
+    assert!(report["hazards"]["checks_made"].as_u64() > Some(10));
+    let kinds = report["hazards"]["findings"].as_array().expect("a list");
+    assert!(kinds.iter().any(|f| f["kind"] == "short_unprotected"), "{kinds:?}");
+    assert_eq!(report["wiring"][0]["wired"], "through_board");
+    assert_eq!(report["verdict"]["word"], "fails");
     refused(&["--board", "best", &short], "two_level");
     refused(&["--board"], "wants a class");
     assert!(stdout(&run(&["boards"])).lines().any(|l| l.starts_with("three_level: ")));

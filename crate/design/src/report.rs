@@ -3,19 +3,20 @@
 //! Keys carry their unit. Numbers are written in the shortest form that reads back as the same number.
 
 use serde_json::{Value, json};
-use strikeline_core::arrangements::{self, Arranged, Given};
+use strikeline_core::arrangements::{self, Arranged, By, Given, Layer};
 use strikeline_core::charge;
 use strikeline_core::charger::{self, ChargeRun, ChargeStart, LoadLeftOn};
 use strikeline_core::hazard::{self, Circumstances, Hazards};
 use strikeline_core::margins::{self, Edge, Map, Margins};
 use strikeline_core::press::{self, PressOptions, PressStart};
+use strikeline_core::ratings::Band;
 use strikeline_core::report::{
     ChargeEnd, ChargeReport, Event, EventKind, Ledger, Limit, Mode, NotFull, PressEnd, PressReport,
     PressSummary, Protector,
 };
 use strikeline_core::setup::Setup;
 use strikeline_core::time_current::{self, Diagram};
-use strikeline_core::units::{Amps, Celsius};
+use strikeline_core::units::{Amps, Celsius, Seconds};
 use strikeline_core::verdict::{self, Overall, Reason, Word};
 
 use crate::check::Checked;
@@ -177,6 +178,8 @@ pub fn json(name: &str, checked: &Checked, answers: &Answers, further: &Further,
         "press": press,
         "charge": charge,
         "charge_weak_parts": charge_json(&checked.weak, &answers.weak),
+        "hazards": hazards_json(&answers.hazards),
+        "wiring": further.arrangements.iter().map(|a| arranged_json(setup, a)).collect::<Vec<_>>(),
         "margins": further.margins.iter().map(|m| margins_json(setup, m, extras.margins)).collect::<Vec<_>>(),
         "charging": further.charging.as_ref().map(|c| charging_json(checked, c)),
     })
@@ -243,6 +246,68 @@ fn verdict_json(setup: &Setup, overall: &Overall) -> Value {
         Reason::StopsEarly(end) => format!("stops_early:{}", end_name(setup, end)),
     };
     json!({ "word": word, "decided_with_parts": parts, "reason": reason, "stop_hazards": overall.stops })
+}
+
+/// The name of a variant, as a key: `NuisanceTrip { … }` is `nuisance_trip`.
+fn key_of(shown: &str) -> String {
+    let mut key = String::new();
+    for c in shown.chars().take_while(char::is_ascii_alphanumeric) {
+        if c.is_ascii_uppercase() && !key.is_empty() {
+            key.push('_');
+        }
+        key.push(c.to_ascii_lowercase());
+    }
+    key
+}
+
+fn hazards_json(hazards: &Hazards) -> Value {
+    let findings: Vec<Value> = hazards
+        .findings
+        .iter()
+        .map(|f| {
+            let level = key_of(&format!("{:?}", f.level));
+            json!({ "level": level, "kind": key_of(&format!("{:?}", f.kind)), "source": hazard::source(&f.kind) })
+        })
+        .collect();
+    let missing: Vec<String> = hazards.not_judged.iter().map(|n| key_of(&format!("{n:?}"))).collect();
+    json!({ "checks_made": hazards.checks_made, "findings": findings, "not_judged": missing })
+}
+
+fn arranged_json(setup: &Setup, a: &Arranged) -> Value {
+    let band = |b: &Option<Band>| b.map(|b| [b.low, b.typical, b.high]);
+    let layers = |list: &[Layer]| -> Vec<Value> {
+        list.iter()
+            .map(|l| {
+                let by = match l.by {
+                    By::Stage(p, k) => limit_name(setup, Limit::Stage(p, k)),
+                    By::OverDischarge(p) => limit_name(setup, Limit::OverDischarge(p)),
+                    By::OverCharge(Protector::Board) => "over_charge".into(),
+                    By::OverCharge(Protector::Second) => "second:over_charge".into(),
+                    By::ChargeOverCurrent(Protector::Board) => "charge_over_current".into(),
+                    By::ChargeOverCurrent(Protector::Second) => "second:charge_over_current".into(),
+                    By::Fuse => "fuse".into(),
+                };
+                json!({ "by": by, "full_A": band(&l.full), "empty_A": band(&l.empty), "delay_s": band(&l.delay) })
+            })
+            .collect()
+    };
+    let seconds = |t: Option<Seconds>| t.map(|t| t.0);
+    json!({
+        "wired": key_of(&format!("{:?}", a.arrangement)),
+        "over_current": layers(&a.over_current),
+        "short_circuit": layers(&a.short_circuit),
+        "over_discharge": layers(&a.over_discharge),
+        "over_charge": layers(&a.over_charge),
+        "charge_over_current": layers(&a.charge_over_current),
+        "short_full_A": a.short_full.current.0,
+        "short_empty_A": a.short_empty.current.0,
+        "cell_K_per_s": a.short_full.cell_k_per_s,
+        "lead_limits_s": a.short_full.leads.iter().map(|l| l.limit.0).collect::<Vec<_>>(),
+        "held_to_3_0_V_s": seconds(a.held.to_3_0),
+        "held_to_2_5_V_s": seconds(a.held.to_2_5),
+        "held_to_2_0_V_s": seconds(a.held.to_2_0),
+        "standby_s": seconds(a.standby),
+    })
 }
 
 fn margins_json(setup: &Setup, margins: &Margins, with_rows: bool) -> Value {
