@@ -89,7 +89,12 @@ pub fn section(setup: &Setup, all: &[Arranged; 4]) -> String {
                 &a.over_charge,
                 &a.charge_over_current,
             ];
-            let cells: String = HEADS.iter().zip(lists).map(|(h, l)| cell(setup, h, l)).collect();
+            // Without a board entered nothing can be said of how one would be wired.
+            let cells: String = if setup.board.is_none() && a.arrangement != Arrangement::NoBoard {
+                "<td colspan=\"5\">no board is entered: start from a class of board to see what it would keep</td>".into()
+            } else {
+                HEADS.iter().zip(lists).map(|(h, l)| cell(setup, h, l)).collect()
+            };
             format!(
                 "<tr{}><th scope=\"row\">{}{}</th>{cells}</tr>",
                 if own { " class=\"own\"" } else { "" },
@@ -100,7 +105,12 @@ pub fn section(setup: &Setup, all: &[Arranged; 4]) -> String {
         .collect();
     // Ways of wiring that lose the same are told together.
     let mut lost: Vec<(Vec<&str>, String)> = Vec::new();
-    for a in all.iter().filter(|a| a.arrangement != Arrangement::ThroughBoard) {
+    let told = |a: &&Arranged| match a.arrangement {
+        Arrangement::ThroughBoard => false,
+        Arrangement::NoBoard => true,
+        Arrangement::LoadAtCell | Arrangement::SwitchBridged => setup.board.is_some(),
+    };
+    for a in all.iter().filter(told) {
         let standby = a.standby.map_or_else(
             || "no standby drain is entered".to_string(),
             |t| format!("the standby drain empties the cell in {}", hazards::long(t.0)),

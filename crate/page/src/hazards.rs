@@ -116,18 +116,20 @@ fn layers_lost(left: &Layers, with: &Layers) -> String {
         ("over-charge", left.over_charge, with.over_charge),
         ("charge over-current", left.charge_over_current, with.charge_over_current),
     ];
-    let lost: Vec<String> = pairs
+    let bare: Vec<&str> = pairs.iter().filter(|(_, left, _)| *left == 0).map(|(name, ..)| *name).collect();
+    let thinner: Vec<String> = pairs
         .iter()
-        .filter(|(_, left, with)| left < with)
-        .map(|(name, left, with)| {
-            if *left == 0 {
-                format!("{name}: nothing is left")
-            } else {
-                format!("{name}: {left} of {with} left")
-            }
-        })
+        .filter(|(_, left, with)| *left > 0 && left < with)
+        .map(|(name, left, with)| format!("{left} of {with} against {name}"))
         .collect();
-    if lost.is_empty() { "nothing is lost that was there".into() } else { lost.join("; ") }
+    let mut said = Vec::new();
+    if !bare.is_empty() {
+        said.push(format!("nothing is left against {}", bare.join(", ")));
+    }
+    if !thinner.is_empty() {
+        said.push(format!("of the layers there were, {} are left", thinner.join(", ")));
+    }
+    if said.is_empty() { "the board no longer opens for the load".into() } else { said.join("; ") }
 }
 
 /// A finding in words.
@@ -200,11 +202,7 @@ pub fn finding(setup: &Setup, kind: &Kind) -> Said {
         }
         Kind::ArrangementLoses { arrangement, left, through_board } => said(
             "The board is not in the load's path",
-            format!(
-                "The load is {}. Against a load through the board: {}.",
-                wired(*arrangement),
-                layers_lost(left, through_board)
-            ),
+            format!("The load is {}: {}.", wired(*arrangement), layers_lost(left, through_board)),
             KEEP,
         ),
         Kind::NoOverChargeLayer { float, input, .. } => said(
@@ -681,6 +679,23 @@ mod tests {
             }
         }
         all
+    }
+
+    #[test]
+    fn exact_without_a_board_nothing_is_said_to_be_kept() {
+        let mut design = Design::demo();
+        design.set("board.arrangement", "no_board");
+        let checked = check(&design).expect("sound");
+        let answers = answer(&checked);
+        let all = section(&checked.nominal, &answers.hazards);
+        assert!(
+            all.contains("nothing is left against over-current, short circuit, over-discharge by the load"),
+            "{all}"
+        );
+        let table = arrangements::section(&checked.nominal, &further(&checked, &answers).arrangements);
+        // The rows of the ways with a board do not read as if a board kept nothing.
+        assert_eq!(table.matches("no board is entered").count(), 3, "{table}");
+        assert_eq!(table.matches("✕ nothing").count(), 5, "{table}");
     }
 
     #[test]
