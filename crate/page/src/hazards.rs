@@ -509,7 +509,7 @@ pub fn finding(setup: &Setup, kind: &Kind) -> Said {
                 || "The output's voltage is not known here.".into(),
                 |v| format!("The output reaches {} kV.", fixed(v.0 * 1e-3, 2)),
             ) + " Hand-held arc and high-voltage devices fall under national rules.",
-            "Local codes and licensed practice come first. Never touch it powered; let it bleed; work with one hand.",
+            "Local codes and licensed practice come first. Never open or touch it powered, and let it bleed before you do.",
         ),
         Kind::DetectionBelowWindow { threshold, limit } => said(
             "Over-discharge detection is below the cell's own limit",
