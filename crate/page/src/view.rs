@@ -256,7 +256,12 @@ impl Page {
     fn draw(&mut self) {
         let Some(checked) = &self.checked else { return };
         let Some(main) = self.element("results") else { return };
+        let clock = self.window.performance();
+        let begin = clock.as_ref().map_or(0.0, web_sys::Performance::now);
         let answers = report::answer(checked);
+        if let Some(clock) = clock {
+            main.set_attribute("data-answers-ms", &fixed(clock.now() - begin, 2)).ok();
+        }
         let width = f64::from(main.client_width().max(260));
         let drawn = results::results(checked, &answers, width);
         // What was folded stays folded.
